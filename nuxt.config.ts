@@ -1,0 +1,49 @@
+/**
+ * Cross-origin isolation gives the workers SharedArrayBuffer; the same headers are set for Vite's own
+ * answers in development, or module workers are blocked there without a word.
+ */
+const isolation = {
+  'Cross-Origin-Opener-Policy': 'same-origin',
+  'Cross-Origin-Embedder-Policy': 'require-corp',
+  'Cross-Origin-Resource-Policy': 'same-origin',
+}
+
+export default defineNuxtConfig({
+  modules: ['@pinia/nuxt', '@nuxtjs/tailwindcss', 'nuxt-auth-utils', '@nuxt/eslint'],
+  components: [{ path: '~/components', pathPrefix: false }],
+  devtools: { enabled: false },
+  app: {
+    head: {
+      htmlAttrs: { lang: 'en' },
+      title: 'Lull',
+      meta: [{ name: 'viewport', content: 'width=device-width, initial-scale=1' }, { name: 'color-scheme', content: 'dark light' }],
+      link: [{ rel: 'icon', type: 'image/svg+xml', href: '/lull.svg' }],
+    },
+  },
+  css: [
+    '@fontsource-variable/atkinson-hyperlegible-next/index.css',
+    '@fontsource-variable/atkinson-hyperlegible-mono/index.css',
+  ],
+  runtimeConfig: {
+    session: { name: 'lull-session', password: '', maxAge: 60 * 60 * 24 * 14, cookie: { sameSite: 'lax', secure: false } },
+    databaseUrl: '',
+    dataDir: '.data',
+    smtpUrl: '',
+    mailFrom: 'Lull <lull@localhost>',
+    publicUrl: '',
+  },
+  srcDir: '.',
+  serverDir: 'server',
+  ignore: ['.data/**', '.cache/**', 'migrations/**', 'tests/**', 'scripts/**'],
+  routeRules: { '/**': { headers: isolation } },
+  compatibilityDate: '2025-07-15',
+  vite: {
+    server: { headers: isolation },
+    worker: { format: 'es' },
+    optimizeDeps: { include: ['comlink', 'fft.js', 'geotiff', 'upng-js', 'konva', 'vue-konva', '@uppy/core', '@uppy/tus', 'zod', 'hash-wasm'] },
+  },
+  typescript: { strict: true },
+  telemetry: { enabled: false },
+  eslint: { config: { stylistic: true } },
+  tailwindcss: { cssPath: '~/assets/css/main.css', viewer: false },
+})

@@ -1,0 +1,33 @@
+/** Reads a recipe of any version and returns one of today's. */
+import type { Recipe } from '../schemas/recipe'
+import { RECIPE_VERSION, recipeSchema } from '../schemas/recipe'
+
+type AnyRecipe = Record<string, unknown>
+
+/** migrations[v] turns a recipe of version v into one of version v + 1. Empty while version 1 is the first. */
+const migrations: Record<number, (recipe: AnyRecipe) => AnyRecipe> = {}
+
+/** Thrown for something that is not a recipe; the message is for the user. */
+export class RecipeError extends Error {
+  override name = 'RecipeError'
+}
+
+/** Parses unknown data as a recipe, migrating older versions. Throws RecipeError with a plain message. */
+export function readRecipe(data: unknown): Recipe {
+  if (typeof data !== 'object' || data === null || Array.isArray(data)) throw new RecipeError('This is not a recipe: a JSON object is expected.')
+  let recipe = data as AnyRecipe
+  const version = recipe.version
+  if (typeof version !== 'number' || !Number.isInteger(version) || version < 1) throw new RecipeError('This is not a recipe: it has no version number.')
+  if (version > RECIPE_VERSION) throw new RecipeError(`This recipe has version ${version}; this Lull reads versions up to ${RECIPE_VERSION}. Update Lull to use it.`)
+  for (let from = version; from < RECIPE_VERSION; from++) {
+    const step = migrations[from]
+    if (!step) throw new RecipeError(`No way is known from recipe version ${from} to ${from + 1}.`)
+    recipe = step(recipe)
+  }
+  const parsed = recipeSchema.safeParse(recipe)
+  if (!parsed.success) {
+    const issue = parsed.error.issues[0]!
+    throw new RecipeError(`The recipe cannot be used: ${issue.path.join('.') || 'it'}: ${issue.message}.`)
+  }
+  return parsed.data
+}

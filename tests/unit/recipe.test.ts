@@ -1,0 +1,56 @@
+import { describe, expect, it } from 'vitest'
+import { canonicalJson, recipeHash } from '../../shared/recipe/canonical'
+import { recipeDiff } from '../../shared/recipe/diff'
+import { readRecipe, RecipeError } from '../../shared/recipe/migrate'
+import { recipeText, withRecipeValue } from '../../shared/recipe/sentences'
+import { defaultRecipe } from '../../shared/schemas/recipe'
+import { keepCount } from '../../shared/schemas/run'
+
+describe('canonical form', () => {
+  // RFC 8785, section 3.2.3: property names sorted by UTF-16 code units, whatever their order in the source.
+  it('sorts keys by code unit', () => {
+    expect(canonicalJson({ '\u20ac': 1, '\r': 2, '1': 3, '\u0080': 4, '\u00f6': 5, '\ud83d\ude00': 6 }))
+      .toBe('{"\\r":2,"1":3,"\u0080":4,"\u00f6":5,"\u20ac":1,"\ud83d\ude00":6}')
+  })
+  it('refuses what JSON cannot hold', () => {
+    expect(() => canonicalJson({ a: Number.NaN })).toThrow(RangeError)
+  })
+  it('hashes equal recipes alike and others not', async () => {
+    const reordered = Object.fromEntries(Object.entries(defaultRecipe).reverse())
+    expect(await recipeHash(reordered)).toBe(await recipeHash(defaultRecipe))
+    expect(await recipeHash(withRecipeValue(defaultRecipe, 'keep.fraction', 0.2))).not.toBe(await recipeHash(defaultRecipe))
+  })
+})
+
+describe('the paragraph', () => {
+  it('reads as sentences', () => {
+    expect(recipeText(defaultRecipe, { blurPx: 1, windowPx: 64 })).toBe(
+      'Repair hot pixels and score each frame by its peak intensity after a blur of 1.0 px. Register in a window of 64 px by cross-correlation, '
+      + 'against the best 5 %, refined twice. Keep the best 10 %, and combine them by their mean with cubic resampling. Restore nothing.')
+  })
+  it('marks only what differs', () => {
+    const after = withRecipeValue(withRecipeValue(defaultRecipe, 'keep.fraction', 0.02), 'restore.scales', 3)
+    const marked = recipeDiff(defaultRecipe, after).filter(piece => piece.kind !== 'same')
+    expect(marked[0]).toEqual({ kind: 'changed', path: 'keep.fraction', name: 'Keep fraction', before: '10 %', after: '2 %' })
+    expect(marked.some(piece => piece.kind === 'added' && piece.text.includes('2.0 ×'))).toBe(true)
+    expect(marked.some(piece => piece.kind === 'removed')).toBe(false)
+  })
+})
+
+describe('reading recipes', () => {
+  it('accepts its own and says what is wrong with others', () => {
+    expect(readRecipe(structuredClone(defaultRecipe))).toEqual(defaultRecipe)
+    expect(() => readRecipe([])).toThrow(RecipeError)
+    expect(() => readRecipe({ version: 99 })).toThrow(/version 99/)
+    expect(() => readRecipe(withRecipeValue(defaultRecipe, 'keep.fraction', 4))).toThrow(/keep\.fraction/)
+  })
+})
+
+describe('keep count', () => {
+  it('is at least one frame and at most all', () => {
+    expect(keepCount(0.08, 2000)).toBe(160)
+    expect(keepCount(0.001, 60)).toBe(1)
+    expect(keepCount(1, 60)).toBe(60)
+    expect(keepCount(0.5, 0)).toBe(0)
+  })
+})

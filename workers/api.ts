@@ -1,0 +1,93 @@
+/**
+ * What the bench asks of the imaging core, over one worker boundary. Implemented by
+ * workers/bench.worker.ts (captures) and workers/guest.worker.ts (filed runs, from the ladder file);
+ * used through composables/useCore.ts, the only module that touches comlink.
+ */
+import type { CaptureFacts, CaptureOverrides, TargetKind } from '../shared/schemas/capture'
+import type { Recipe } from '../shared/schemas/recipe'
+import type { DisplayStretch, LadderInfo, Provenance, SetAsideReason, StackFigures } from '../shared/schemas/run'
+
+/** A capture to open: files picked by the user (one file, or the files of a folder in any order), or a demo. */
+export type CaptureInput =
+  | { kind: 'files', name: string, files: File[] }
+  | { kind: 'url', name: string, urls: { url: string, name: string, sizeBytes: number }[] }
+  | { kind: 'demo', scene: 'double' | 'triple' | 'planet' | 'terrain' }
+
+/** A bad capture, as plain data (an Error does not cross the boundary whole). */
+export interface CaptureProblem {
+  code: 'empty' | 'truncated' | 'no-frames' | 'absurd-size' | 'unsupported-depth' | 'unsupported-compression'
+    | 'wrong-extension' | 'unknown-format' | 'mixed-sizes' | 'damaged' | 'unreadable' | 'too-large'
+  /** What is wrong and what to do, for the user. */
+  message: string
+}
+
+export type OpenAnswer = { ok: true, facts: CaptureFacts, resumable: boolean } | { ok: false, problem: CaptureProblem }
+
+export type Pass = 'open' | 'survey' | 'grade' | 'refine' | 'ladder' | 'proofs'
+
+/** Progress of a pass; at most ten a second. */
+export interface PassProgress { pass: Pass, round: number, done: number, total: number, framesPerSecond: number, secondsLeft: number | null }
+
+/** The frame table in columns, growing while grade runs. Index = frame number from 0. NaN where not known. */
+export interface FrameColumns {
+  count: number
+  /** Score that ranks (by the recipe's measure); larger is sharper. */
+  score: Float64Array
+  laplacian: Float64Array
+  peak: Float64Array
+  /** Place of the target, px, and the shift that moves the frame onto the reference. */
+  x: Float64Array
+  y: Float64Array
+  dx: Float64Array
+  dy: Float64Array
+  /** 1 is best; 0 where set aside. */
+  rank: Int32Array
+  /** 0 ranked; otherwise 1 + index in setAsideReasons. */
+  setAside: Uint8Array
+  /** Seconds since the first frame, or frame number × median interval, or null. */
+  seconds: Float64Array | null
+}
+
+/** Stage results as they come. Arrays are copies that the receiver owns. */
+export type RunEvent =
+  | { kind: 'progress', progress: PassProgress }
+  | { kind: 'surveyed', target: TargetKind, chosen: { blurPx: number, windowPx: number, centre: { x: number, y: number } }, noise: number, noSignal: boolean, preview: StackImage }
+  | { kind: 'frames', columns: FrameColumns, complete: boolean }
+  | { kind: 'preview', image: StackImage }
+  | { kind: 'ranked', ranked: number, setAside: Partial<Record<SetAsideReason, number>> }
+  | { kind: 'ladder', ladder: LadderInfo }
+  | { kind: 'proof', fraction: number | 'average', image: StackImage, figures: StackFigures }
+  | { kind: 'done', provenance: Provenance }
+
+/** A stack ready for the canvas and for reading values. `samples` planar, row-major, planes × height × width. */
+export interface StackImage {
+  width: number, height: number, planes: 1 | 3
+  samples: Float32Array
+  /** Frames in it. */
+  count: number
+  restored: boolean
+}
+
+export interface Optics { apertureMm: number, focalLengthMm: number, pixelSizeUm: number, obstruction: number, wavelengthNm: number }
+
+/** Bytes of one export, ready to save or to file. */
+export interface ExportFile { role: string, name: string, type: string, bytes: Uint8Array }
+
+export type ExportKind = 'stack-fits' | 'average-fits' | 'stack-tiff16' | 'stack-png16' | 'view-png8' | 'frames-csv' | 'recipe-json' | 'facts-json' | 'ladder-fits' | 'proofs-png' | 'thumbnail-png'
+
+export interface CoreApi {
+  open(input: CaptureInput, overrides: CaptureOverrides): Promise<OpenAnswer>
+  /** Runs whatever stages the recipe needs that are not there yet. Resolves when all are done or the run was cancelled. */
+  run(recipe: Recipe, optics: Optics | null, onEvent: (event: RunEvent) => void): Promise<{ cancelled: boolean }>
+  /** Stops the running pass within 100 ms; what was computed is kept. */
+  cancel(): Promise<void>
+  /** The stack of exactly the best `count` frames, restored if the recipe says so and `restored` is asked. */
+  stack(count: number, restored: boolean): Promise<StackImage>
+  /** Figures of a stack of `count` frames. */
+  figures(count: number): Promise<StackFigures>
+  /** One decoded frame (luminance as judged), for looking at a single exposure. */
+  frame(index: number): Promise<StackImage>
+  /** Files for saving or filing; `stretch` is used by the 8-bit views. */
+  export(kinds: ExportKind[], context: { recipe: Recipe, stretch: DisplayStretch, fraction: number, targetName: string, observer: string, recipeName: string | null }): Promise<ExportFile[]>
+  close(): Promise<void>
+}
