@@ -8,9 +8,9 @@ export default {
     boxShadow: {},
     extend: {
       colors: {
-        ground: 'var(--ground)', raised: 'var(--raised)', hairline: 'var(--hairline)',
+        ground: 'var(--ground)', raised: 'var(--raised)', hairline: 'var(--hairline)', edge: 'var(--edge)',
         ink: 'var(--ink)', soft: 'var(--soft)', lamp: 'var(--lamp)', 'lamp-dim': 'var(--lamp-dim)',
-        'on-lamp': 'var(--on-lamp)', cold: 'var(--cold)', good: 'var(--good)', bad: 'var(--bad)',
+        'on-lamp': 'var(--on-lamp)', 'on-dim': 'var(--on-dim)', cold: 'var(--cold)', good: 'var(--good)', bad: 'var(--bad)',
       },
       fontFamily: {
         sans: ['"Atkinson Hyperlegible Next Variable"', 'system-ui', 'sans-serif'],
