@@ -5,7 +5,7 @@
  */
 import type { CaptureFacts, CaptureOverrides, TargetKind } from '../shared/schemas/capture'
 import type { Recipe } from '../shared/schemas/recipe'
-import type { DisplayStretch, LadderInfo, Provenance, SetAsideReason, StackFigures } from '../shared/schemas/run'
+import type { DisplayStretch, LadderInfo, Provenance, RunResult, SetAsideReason, StackFigures } from '../shared/schemas/run'
 
 /** A capture to open: files picked by the user (one file, or the files of a folder in any order), or a demo. */
 export type CaptureInput =
@@ -57,6 +57,8 @@ export type RunEvent =
   | { kind: 'ranked', ranked: number, setAside: Partial<Record<SetAsideReason, number>> }
   | { kind: 'ladder', ladder: LadderInfo }
   | { kind: 'proof', fraction: number | 'average', image: StackImage, figures: StackFigures }
+  /** A pass that was computed (not taken from memory or the browser's store). Times in ms since the Unix epoch. */
+  | { kind: 'timing', pass: Pass, startedAt: number, ms: number }
   | { kind: 'done', provenance: Provenance }
 
 /** A stack ready for the canvas and for reading values. `samples` planar, row-major, planes × height × width. */
@@ -66,6 +68,8 @@ export interface StackImage {
   /** Frames in it. */
   count: number
   restored: boolean
+  /** With a restored stack: deepest dip and highest rise beyond what was nearby, as shares of the image's range. */
+  overshoot?: { under: number, over: number }
 }
 
 export interface Optics { apertureMm: number, focalLengthMm: number, pixelSizeUm: number, obstruction: number, wavelengthNm: number }
@@ -91,3 +95,22 @@ export interface CoreApi {
   export(kinds: ExportKind[], context: { recipe: Recipe, stretch: DisplayStretch, fraction: number, targetName: string, observer: string, recipeName: string | null }): Promise<ExportFile[]>
   close(): Promise<void>
 }
+
+/** A filed run to look at without its capture: the ladder file by HTTP ranges and the frame table. */
+export interface FiledRun { ladderUrl: string, ladderBytes: number, framesUrl: string, averageUrl: string | null, result: RunResult }
+
+/** What a guest's bench asks; implemented by workers/guest.worker.ts. Counts snap to rungs, so that the count shown is what is in the image. */
+export interface GuestApi {
+  /** The rungs' counts, ascending, and the frame table. */
+  open(run: FiledRun): Promise<{ counts: number[], columns: FrameColumns }>
+  /** The stack of the rung nearest to `count`; its `count` says which. */
+  stack(count: number, restored: boolean): Promise<StackImage>
+  figures(count: number): Promise<StackFigures>
+  /** The plain unregistered average; null where the run holds none. */
+  average(): Promise<StackImage | null>
+  close(): Promise<void>
+  alive(): Promise<boolean>
+}
+
+/** What the worker exposes besides: an answer that only a worker that is not stuck can give. */
+export interface WorkerApi extends CoreApi { alive(): Promise<boolean> }
