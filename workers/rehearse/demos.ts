@@ -43,7 +43,7 @@ const terrain: RehearsalSpec = {
   ...double, name: 'Quarry patch', seed: 2404, width: 192, height: 160, frames: 300, start: '2026-11-28T19:05:12.000Z', exposureMs: 6, intervalMs: 20,
   optics: { apertureMm: 280, focalLengthMm: 4200, pixelSizeUm: 2.9, obstruction: 0.3, wavelengthNm: 620 },
   air: { ...double.air, apertureOverR0: 3.8, gusts: { amplitude: 0.35, periodS: 4 } },
-  scene: { kind: 'terrain', seed: 5, sunAltitudeDeg: 17, sunAzimuthDeg: 285, fluxElectrons: 900 },
+  scene: { kind: 'terrain', seed: 5, sunAltitudeDeg: 21, sunAzimuthDeg: 285, fluxElectrons: 900 },
   motion: { ...steady, startX: -4, startY: 3, rateXPxPerS: 1.1, rateYPxPerS: -0.6, periodicPx: 2, periodS: 5, shakePx: 0.2 },
   dropShare: 0,
   detector: { bitDepth: 12, gain: 3.2, bias: 120, readNoise: 2.5, skyElectrons: 0.5, hotPixels: 10, hotElectrons: [200, 1200], mosaic: 'none' },

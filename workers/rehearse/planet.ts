@@ -22,12 +22,13 @@ export function drawPlanet(scene: Extract<Scene, { kind: 'planet' }>, size: numb
   // The two main belts, one on each side of the equator.
   belts.push({ latitude: 0.24, width: 0.10, depth: 1 }, { latitude: -0.27, width: 0.12, depth: 0.9 })
   const spots: Spot[] = [
-    { longitude: 0.42, latitude: -0.42, width: 0.21, height: 0.11, colour: [0.86, 0.52, 0.38], strength: 0.9 },
-    { longitude: -0.55, latitude: 0.26, width: 0.10, height: 0.035, colour: [0.45, 0.34, 0.28], strength: 0.9 },
-    { longitude: -0.12, latitude: 0.235, width: 0.07, height: 0.03, colour: [0.48, 0.36, 0.30], strength: 0.75 },
-    { longitude: -0.35, latitude: -0.58, width: 0.07, height: 0.05, colour: [1, 0.98, 0.92], strength: 0.8 },
-    { longitude: 0.05, latitude: -0.60, width: 0.05, height: 0.04, colour: [1, 0.98, 0.92], strength: 0.7 },
-    { longitude: 0.75, latitude: 0.50, width: 0.06, height: 0.04, colour: [1, 0.97, 0.9], strength: 0.6 },
+    { longitude: 0.36, latitude: 0.47, width: 0.15, height: 0.07, colour: [0.60, 0.50, 0.46], strength: 0.85 },
+    { longitude: 0.36, latitude: 0.47, width: 0.08, height: 0.035, colour: [0.92, 0.86, 0.76], strength: 0.8 },
+    { longitude: -0.52, latitude: 0.26, width: 0.10, height: 0.03, colour: [0.44, 0.34, 0.29], strength: 0.85 },
+    { longitude: -0.16, latitude: 0.235, width: 0.06, height: 0.028, colour: [0.48, 0.37, 0.31], strength: 0.7 },
+    { longitude: 0.12, latitude: -0.27, width: 0.13, height: 0.04, colour: [1, 0.94, 0.82], strength: 0.65 },
+    { longitude: -0.35, latitude: -0.57, width: 0.07, height: 0.045, colour: [1, 0.98, 0.92], strength: 0.8 },
+    { longitude: 0.62, latitude: -0.60, width: 0.06, height: 0.04, colour: [1, 0.98, 0.92], strength: 0.7 },
   ]
   const radius = scene.diameterArcsec / scaleArcsec / 2
   // Unit vector of the planet's north pole on the screen (y down); position angle from screen up through left.
@@ -51,13 +52,13 @@ export function drawPlanet(scene: Extract<Scene, { kind: 'planet' }>, size: numb
     // Festoons: the belts' edges wander, and more so finely along the flow than across it.
     const wander = swirl(u * 1.0, latitude * 0.55 + 0.5)
     const fine = swirl(u * 2 + 0.37 + 0.05 * wander, latitude * 1.6 + 0.11)
-    const wavy = latitude + 0.035 * wander + 0.012 * fine
+    const wavy = latitude + 0.05 * wander + 0.022 * fine
     let belt = 0
     for (const { latitude: middle, width, depth } of belts) {
       const away = Math.abs(wavy - middle) / width
-      belt = Math.max(belt, depth * (1 - smoothStep(0.65, 1.25, away)))
+      belt = Math.max(belt, depth * (1 - smoothStep(0.6, 1.35, away)))
     }
-    belt = Math.max(0, Math.min(1, belt * (0.9 + 0.35 * fine) + 0.10 * fine + 0.05))
+    belt = Math.max(0, Math.min(1, belt * (0.9 + 0.5 * fine) + 0.16 * fine + 0.05))
     const pole = smoothStep(0.8, 1.25, Math.abs(latitude))
     const mu = towards
     for (let plane = 0; plane < 3; plane++) {

@@ -3,9 +3,19 @@ import type { Scene } from './spec'
 import { createFractal, smoothStep, type Drawing } from './texture'
 import { createRandom } from './random'
 
+/** Central peaks: place in crater radii, height in crater depths. */
+const PEAKS = [[-0.04, 0.03, 0.5], [0.11, -0.09, 0.32], [-0.02, -0.17, 0.2]] as const
+
 /** Adds a crater to the height map, which repeats at its edges. Heights and radius in px. */
-function dig(height: Float64Array, size: number, x: number, y: number, radius: number, depth: number, peak: boolean, ragged: (angle: number) => number): void {
+function dig(height: Float64Array, size: number, x: number, y: number, radius: number, depth: number, large: boolean, ragged: (angle: number) => number): void {
   const reach = Math.ceil(2.6 * radius)
+  // The ground that it fell on: mean height around the place.
+  let ground = 0
+  for (let turn = 0; turn < 8; turn++) {
+    const column = Math.round(x + 0.9 * radius * Math.cos(turn * Math.PI / 4))
+    const row = Math.round(y + 0.9 * radius * Math.sin(turn * Math.PI / 4))
+    ground += height[(row & (size - 1)) * size + (column & (size - 1))]! / 8
+  }
   for (let j = -reach; j <= reach; j++) {
     for (let i = -reach; i <= reach; i++) {
       const column = Math.floor(x) + i
@@ -15,19 +25,21 @@ function dig(height: Float64Array, size: number, x: number, y: number, radius: n
       const r = Math.hypot(dx, dy) / (radius * (1 + 0.07 * ragged(Math.atan2(dy, dx))))
       if (r > 2.5) continue
       const at = ((row + size) & (size - 1)) * size + ((column + size) & (size - 1))
-      const floor = peak ? 0.62 : 0.15
-      // Bowl with a flattened floor, raised rim at r = 1, blanket of debris falling off outside.
-      const rim = 0.28
+      // A bowl, or for the large ones a flat floor and slumped walls; a raised rim; debris falling off outside.
+      const floor = large ? 0.6 : 0.1
+      const rim = large ? 0.22 : 0.18
       let value: number
       if (r < 1) {
-        const bowl = Math.max(0, (r - floor) / (1 - floor))
-        value = -1 + (1 + rim) * bowl * bowl * (3 - 2 * bowl) * 0.999
-        if (peak) value += 0.55 * Math.exp(-((r / 0.14) ** 2)) + 0.05 * Math.cos(9 * r)
+        const wall = Math.max(0, (r - floor) / (1 - floor))
+        const slump = large ? 0.07 * Math.sin(2 * Math.PI * Math.min(1, wall)) * Math.sin(5 * Math.atan2(dy, dx) + x) : 0
+        value = -1 + (1 + rim) * (wall * wall * (3 - 2 * wall) + slump)
+        // A group of peaks in the middle.
+        if (large) for (const [px, py, strength] of PEAKS) value += strength * Math.exp(-(((dx / radius - px) / 0.1) ** 2) - (((dy / radius - py) / 0.1) ** 2))
       }
-      else value = rim * (r ** -3.2) * (1 - smoothStep(1.9, 2.5, r))
+      else value = rim * (r ** -3) * (1 - smoothStep(1.8, 2.5, r))
       // Inside, the crater replaces what was there; outside it lies on top.
       const cover = 1 - smoothStep(0.85, 1.15, r)
-      height[at] = height[at]! * (1 - 0.75 * cover) + depth * value
+      height[at] = height[at]! - (height[at]! - ground) * 0.8 * cover + depth * value
     }
   }
 }
@@ -38,27 +50,32 @@ export function drawTerrain(scene: Extract<Scene, { kind: 'terrain' }>, size: nu
   const soil = createFractal(scene.seed, 51, 4, 6, 0.6)
   const height = new Float64Array(size * size)
   for (let row = 0, at = 0; row < size; row++) {
-    for (let column = 0; column < size; column++, at++) height[at] = 0.022 * size * relief(column / size, row / size)
+    for (let column = 0; column < size; column++, at++) height[at] = 0.03 * size * relief(column / size, row / size)
   }
 
   // Numbers fall with the square of the radius, as on worn ground; the oldest and largest come first.
   const largest = size * 0.17
-  const smallest = 1.1
+  const smallest = 1.3
   const craters: { x: number, y: number, radius: number }[] = [
     { x: 0.44 * size, y: 0.53 * size, radius: largest }, { x: 0.62 * size, y: 0.39 * size, radius: largest * 0.55 },
     { x: 0.34 * size, y: 0.36 * size, radius: largest * 0.42 },
   ]
-  const count = Math.round(0.018 * size * size / (smallest * smallest))
+  const count = Math.round(0.011 * size * size / (smallest * smallest))
   for (let i = 0; i < count; i++) {
-    const radius = Math.min(largest * 0.5, smallest / Math.sqrt(1 - random.uniform() * 0.9985))
-    craters.push({ x: size * random.uniform(), y: size * random.uniform(), radius })
+    const radius = Math.min(largest * 0.4, smallest / Math.sqrt(1 - random.uniform() * 0.9985))
+    const x = size * random.uniform()
+    const y = size * random.uniform()
+    // The three named first are young: nothing large fell into them since.
+    const young = craters.slice(0, 3).some(named => Math.hypot(x - named.x, y - named.y) < named.radius * 1.15)
+    if (!young || (radius < 0.012 * size && random.uniform() < 0.3)) craters.push({ x, y, radius })
   }
   craters.sort((a, b) => b.radius - a.radius)
   for (const { x, y, radius } of craters) {
     const turns = [2, 3, 5, 7].map(times => ({ times, phase: 2 * Math.PI * random.uniform(), gain: random.normal() / Math.sqrt(times) }))
-    const fresh = 0.35 + 0.65 * random.uniform()
+    // Old craters are worn down; few are fresh.
+    const fresh = Math.min(1, radius / 3) * (0.35 + 0.65 * random.uniform() ** 2)
     const large = radius > 0.06 * size
-    dig(height, size, x, y, radius, radius * (large ? 0.24 : 0.36 * fresh), large, angle => turns.reduce((sum, { times, phase, gain }) => sum + gain * Math.cos(times * angle + phase), 0))
+    dig(height, size, x, y, radius, radius * (large ? 0.17 : 0.36 * fresh), large, angle => turns.reduce((sum, { times, phase, gain }) => sum + gain * Math.cos(times * angle + phase), 0))
   }
 
   // Towards the light on the screen: position angle from up through left.
@@ -102,7 +119,7 @@ export function drawTerrain(scene: Extract<Scene, { kind: 'terrain' }>, size: nu
       }
       light *= clear
       const albedo = 0.8 + 0.28 * soil(column / size, row / size)
-      plane[index] = albedo * (light + 0.004)
+      plane[index] = albedo * (light + 0.006)
     }
   }
   // The brightest thousandth is white.
