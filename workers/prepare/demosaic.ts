@@ -62,7 +62,8 @@ export function demosaic(raw: Float32Array, width: number, height: number, patte
         out[own + o] = c
         out[size + o] = 0.125 * (4 * c + 2 * (cross1 + crossV) - (farH + farV))
         out[other + o] = 0.125 * (6 * c + 2 * diagonal - 1.5 * (farH + farV))
-      } else {
+      }
+      else {
         out[size + o] = c
         out[own + o] = 0.125 * (5 * c + 4 * cross1 - diagonal - farH + 0.5 * farV)
         out[other + o] = 0.125 * (5 * c + 4 * crossV - diagonal - farV + 0.5 * farH)

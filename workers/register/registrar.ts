@@ -57,7 +57,8 @@ function correlationRegistrar(plan: RegisterPlan): Registrar {
     for (const image of starImages(reference, width, height, refX, refY, plan.blurPx, n)) {
       addImpulse(pattern, cut, n, image.x - refX0, image.y - refY0, image.weight)
     }
-  } else {
+  }
+  else {
     loader(reference, refX0, refY0, window)
     forward.forward(window, pattern)
   }
@@ -177,7 +178,8 @@ function createLoader(plan: RegisterPlan): (frame: Float32Array, x0: number, y0:
       for (let x = left; x < right; x++) level += frame[top * width + x]! + frame[(bottom - 1) * width + x]!
       for (let y = top; y < bottom; y++) level += frame[y * width + left]! + frame[y * width + right - 1]!
       level /= 2 * (columns + rows)
-    } else {
+    }
+    else {
       for (let y = top; y < bottom; y++) for (let i = y * width + left; i < y * width + right; i++) level += frame[i]!
       level /= columns * rows
     }

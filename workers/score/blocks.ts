@@ -32,7 +32,8 @@ export function fillBlocks(frame: Float32Array, width: number, blocks: Blocks): 
     const to = Math.floor(y / side) * columns
     if (side === 4) {
       for (let b = 0, x = row; b < columns; b++, x += 4) means[to + b]! += frame[x]! + frame[x + 1]! + frame[x + 2]! + frame[x + 3]!
-    } else {
+    }
+    else {
       for (let b = 0, x = row; b < columns; b++) {
         let s = 0
         for (let k = 0; k < side; k++, x++) s += frame[x]!

@@ -66,7 +66,8 @@ export function createWindowBlur(sigma: number, maxColumns: number, maxRows: num
         const n = columns + 2 * reach
         if (inside) {
           for (let x = 0; x < n; x++) line[x] = frame[from + x]!
-        } else {
+        }
+        else {
           for (let x = 0; x < n; x++) line[x] = frame[fy * width + Math.min(width - 1, Math.max(0, x0 - reach + x))]!
         }
         const to = (y + reach) * columns
@@ -75,12 +76,14 @@ export function createWindowBlur(sigma: number, maxColumns: number, maxRows: num
           const k1 = k[1]!
           const k2 = k[2]!
           for (let x = 0; x < columns; x++) across[to + x] = k0 * line[x + 2]! + k1 * (line[x + 1]! + line[x + 3]!) + k2 * (line[x]! + line[x + 4]!)
-        } else if (reach === 3) {
+        }
+        else if (reach === 3) {
           const k1 = k[1]!
           const k2 = k[2]!
           const k3 = k[3]!
           for (let x = 0; x < columns; x++) across[to + x] = k0 * line[x + 3]! + k1 * (line[x + 2]! + line[x + 4]!) + k2 * (line[x + 1]! + line[x + 5]!) + k3 * (line[x]! + line[x + 6]!)
-        } else {
+        }
+        else {
           for (let x = 0; x < columns; x++) {
             let s = k0 * line[x + reach]!
             for (let j = 1; j <= reach; j++) s += k[j]! * (line[x + reach - j]! + line[x + reach + j]!)
