@@ -42,7 +42,8 @@ export default defineNuxtConfig({
     worker: { format: 'es' },
     optimizeDeps: { include: ['comlink', 'fft.js', 'geotiff', 'upng-js', 'konva', 'vue-konva', '@uppy/core', '@uppy/tus', 'zod', 'hash-wasm'] },
   },
-  typescript: { strict: true },
+  // AssemblyScript only looks like TypeScript; scripts/build-kernels.mjs compiles it.
+  typescript: { strict: true, tsConfig: { exclude: ['../workers/kernels/assembly/**'] } },
   telemetry: { enabled: false },
   eslint: { config: { stylistic: true } },
   tailwindcss: { cssPath: '~/assets/css/main.css', viewer: false },

@@ -113,9 +113,9 @@ export function useCore(): CoreHandle {
     async cancel() {
       if (bridge && !bridge.stopped) await bridge.call(bridge.api.cancel() as Promise<void>)
     },
-    async stack(count: number, restored: boolean) {
+    async stack(count: number, restored: boolean, dragging = false) {
       const { api, call } = bound(live())
-      return await call(api.stack(count, restored) as Promise<StackImage>)
+      return await call(api.stack(count, restored, dragging) as Promise<StackImage>)
     },
     async figures(count: number) {
       const { api, call } = bound(live())

@@ -85,8 +85,13 @@ export interface CoreApi {
   run(recipe: Recipe, optics: Optics | null, onEvent: (event: RunEvent) => void): Promise<{ cancelled: boolean }>
   /** Stops the running pass within 100 ms; what was computed is kept. */
   cancel(): Promise<void>
-  /** The stack of exactly the best `count` frames, restored if the recipe says so and `restored` is asked. */
-  stack(count: number, restored: boolean): Promise<StackImage>
+  /**
+   * The stack of exactly the best `count` frames, restored if the recipe says so and `restored` is asked.
+   * With `dragging` it may be the stack of the nearest rung, where the exact one would have to read the file:
+   * show the image's own `count`, and ask again without `dragging` on release. A newer call ends an older
+   * one that is not finished; the older one then rejects with an AbortError.
+   */
+  stack(count: number, restored: boolean, dragging?: boolean): Promise<StackImage>
   /** Figures of a stack of `count` frames. */
   figures(count: number): Promise<StackFigures>
   /** One decoded frame (luminance as judged), for looking at a single exposure. */

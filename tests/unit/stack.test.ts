@@ -19,7 +19,7 @@ function scene(dx: number, dy: number): Float32Array {
 }
 
 function stackOf(frames: { image: Float32Array, dx: number, dy: number }[], kernel: 'cubic' | 'bilinear' | 'nearest', scale = 512) {
-  const sum = fixedSum(width * height)
+  const sum = fixedSum(new Int32Array(width * height))
   const marks = coverageMarks(width, height)
   const scratch = scratchFor(width)
   for (const { image, dx, dy } of frames) {
@@ -97,7 +97,7 @@ describe('adding shifted frames', () => {
 
   it('holds more frames than 32 bits could', () => {
     const bright = new Float32Array(width * height).fill(65535)
-    const sum = fixedSum(width * height)
+    const sum = fixedSum(new Int32Array(width * height))
     const scratch = scratchFor(width)
     const scale = fixedScale(65535)
     for (let k = 0; k < 1300; k++) {

@@ -17,7 +17,8 @@ export function fixedScale(largest: number): number {
 /** A growing exact sum of planes; `pending` counts the frames in the 32-bit part. */
 export interface FixedSum { small: Int32Array, large: Float64Array | null, pending: number }
 
-export const fixedSum = (size: number): FixedSum => ({ small: new Int32Array(size), large: null, pending: 0 })
+/** @param small the 32-bit part, all zeros */
+export const fixedSum = (small: Int32Array): FixedSum => ({ small, large: null, pending: 0 })
 
 /** Call before adding a frame: empties the 32-bit part when it is full. */
 export function makeRoom(sum: FixedSum): void {

@@ -1,0 +1,184 @@
+/**
+ * One worker's arithmetic: prepares, scores, registers and adds frames. It keeps its buffers from request
+ * to request and allocates nothing per frame. It knows nothing of threads: a browser worker, a Node thread
+ * and the single-threaded pool all hold one.
+ */
+import { makeKernels, type Kernels } from '../kernels/index'
+import { prepareColour, prepareLuminance } from '../prepare/frame'
+import type { PreparePlan } from '../prepare/types'
+import { createRegistrar, emptyShift, type Registrar } from '../register/registrar'
+import { createScorer, emptyScore, type Scorer } from '../score/scorer'
+import { addSum, fixedSum, makeRoom, type FixedSum } from '../stack/fixed'
+import type { ResampleKernel } from '../../shared/schemas/recipe'
+import { AverageSum } from './average'
+import type { Batch, ComputeReply, ComputeRequest, GradeReply, JudgeSetup, ShiftReply } from './messages'
+
+type Of<Op extends ComputeRequest['op']> = Extract<ComputeRequest, { op: Op }>
+
+/** What is needed to add prepared frames to sums. */
+export interface Adder { plan: PreparePlan, planes: 1 | 3, scale: number, kernel: ResampleKernel, kernels: Kernels, frame: Float32Array }
+
+/** An adder with memory for `sums` 32-bit sums; they are made with its kernels. */
+export function makeAdder(how: Omit<Adder, 'kernels' | 'frame'>, sums: number): Adder {
+  const samples = how.plan.width * how.plan.height * how.planes
+  const kernels = makeKernels((sums + 1) * (samples * 4 + 128), how.plan.width)
+  return { ...how, kernels, frame: kernels.floats(samples) }
+}
+
+/** Bits of the flags column. */
+export const SATURATED = 1
+export const EMPTY = 2
+export const OUTSIDE = 4
+
+export class Computer {
+  #setup: JudgeSetup | null = null
+  #scorer: Scorer | null = null
+  #registrar: Registrar | null = null
+  #luminance = new Float32Array(0)
+  #score = emptyScore()
+  #shift = emptyShift()
+  #sums: { adder: Adder, slots: (FixedSum | null)[] } | null = null
+  #average: AverageSum | null = null
+
+  handle<T extends ComputeRequest>(request: T): ComputeReply<T> {
+    return this.#answer(request) as ComputeReply<T>
+  }
+
+  #answer(request: ComputeRequest): ComputeReply {
+    switch (request.op) {
+      case 'setup': return this.#begin(request.setup)
+      case 'grade': return this.#grade(request)
+      case 'register': return this.#register(request)
+      case 'sums': return this.#openSums(request)
+      case 'add': return this.#add(request)
+      case 'take': return { sums: request.slots.map(slot => this.#take(slot)) }
+      case 'peek': return { sums: request.slots.map(slot => this.#peek(slot)) }
+      case 'put': return this.#put(request.slot, request.sum)
+      case 'rest': return this.#rest()
+      case 'take-average': return this.#takeAverage(request.size)
+    }
+  }
+
+  #begin(setup: JudgeSetup): null {
+    this.#setup = setup
+    this.#luminance = new Float32Array(setup.prepare.width * setup.prepare.height)
+    this.#scorer = setup.score && createScorer(setup.score)
+    this.#registrar = setup.register && createRegistrar(setup.register)
+    return null
+  }
+
+  #grade({ batch, register, averageScale }: Of<'grade'>): GradeReply {
+    const n = batch.count
+    const column = () => new Float64Array(n)
+    const reply: GradeReply = {
+      laplacian: column(), peak: column(), flux: column(), background: column(), x: column(), y: column(),
+      flags: new Uint8Array(n), shifts: register ? shiftReply(n) : null,
+    }
+    const plan = this.#setup!.prepare
+    const stride = plan.width * plan.height * plan.planes
+    const score = this.#score
+    for (let i = 0; i < n; i++) {
+      const clipped = prepareLuminance(batch.samples, batch.offset + i * stride, plan, this.#luminance)
+      this.#scorer!.score(this.#luminance, clipped, score)
+      reply.laplacian[i] = score.laplacian
+      reply.peak[i] = score.peak
+      reply.flux[i] = score.flux
+      reply.background[i] = score.background
+      reply.x[i] = score.x
+      reply.y[i] = score.y
+      reply.flags[i] = (score.saturated ? SATURATED : 0) | (score.empty ? EMPTY : 0) | (score.outOfField ? OUTSIDE : 0)
+      if (reply.shifts) this.#shiftInto(reply.shifts, i, score.x, score.y)
+    }
+    this.#average ??= new AverageSum(stride, batch.samples, averageScale)
+    this.#average.add(batch.samples, batch.offset, n)
+    return reply
+  }
+
+  #register({ batch, picks, x, y }: Of<'register'>): ShiftReply {
+    const reply = shiftReply(picks.length)
+    const plan = this.#setup!.prepare
+    const stride = plan.width * plan.height * plan.planes
+    for (let i = 0; i < picks.length; i++) {
+      prepareLuminance(batch.samples, batch.offset + picks[i]! * stride, plan, this.#luminance)
+      this.#shiftInto(reply, i, x[i]!, y[i]!)
+    }
+    return reply
+  }
+
+  #shiftInto(reply: ShiftReply, i: number, x: number, y: number): void {
+    this.#registrar!.register(this.#luminance, x, y, this.#shift)
+    reply.dx[i] = this.#shift.dx
+    reply.dy[i] = this.#shift.dy
+    reply.confidence[i] = this.#shift.confidence
+    reply.sure[i] = this.#shift.sure ? 1 : 0
+  }
+
+  #openSums({ plan, slots, planes, scale, kernel }: Of<'sums'>): null {
+    this.#sums = { adder: makeAdder({ plan, planes, scale, kernel }, slots), slots: new Array<FixedSum | null>(slots).fill(null) }
+    return null
+  }
+
+  #add({ batch, picks, slot, dx, dy }: Of<'add'>): null {
+    const { adder, slots } = this.#sums!
+    for (let i = 0; i < picks.length; i++) {
+      const sum = slots[slot[i]!] ??= fixedSum(adder.kernels.ints(adder.frame.length))
+      makeRoom(sum)
+      addFrame(adder, batch, picks[i]!, dx[i]!, dy[i]!, 1, sum.small)
+    }
+    return null
+  }
+
+  /** The exact sum of a slot, which is given up. */
+  #take(slot: number): Int32Array | Float64Array {
+    const sum = this.#peek(slot)
+    if (this.#sums) this.#sums.slots[slot] = null
+    return sum
+  }
+
+  /** A copy of the exact sum of a slot, 32-bit while it fits. An untouched slot gives an empty array. */
+  #peek(slot: number): Int32Array | Float64Array {
+    const sum = this.#sums?.slots[slot]
+    if (!sum) return new Int32Array(0)
+    if (!sum.large) return sum.small.slice()
+    const whole = new Float64Array(sum.small.length)
+    addSum(whole, sum)
+    return whole
+  }
+
+  /** Fills a slot with a sum that was saved. */
+  #put(slot: number, sum: Float64Array): null {
+    const { adder, slots } = this.#sums!
+    slots[slot] = { ...fixedSum(adder.kernels.ints(adder.frame.length)), large: sum }
+    return null
+  }
+
+  /** Gives the memory of sums and buffers back. */
+  #rest(): null {
+    this.#sums = null
+    this.#scorer = null
+    this.#registrar = null
+    return null
+  }
+
+  #takeAverage(size: number): { sum: Float64Array } {
+    const sum = this.#average?.take() ?? new Float64Array(size)
+    this.#average = null
+    return { sum }
+  }
+}
+
+/** Prepares frame `pick` of a batch and adds it, shifted, to a sum of planes that the adder's kernels made. */
+export function addFrame({ plan, planes, scale, kernel, kernels, frame }: Adder, batch: Batch, pick: number, dx: number, dy: number, sign: 1 | -1, sum: Int32Array): void {
+  const size = plan.width * plan.height
+  const offset = batch.offset + pick * size * plan.planes
+  if (planes === 1) prepareLuminance(batch.samples, offset, plan, frame)
+  else prepareColour(batch.samples, offset, plan, frame)
+  for (let plane = 0; plane < planes; plane++) {
+    kernels.addShifted(frame.subarray(plane * size, (plane + 1) * size), plan.width, plan.height, dx, dy, kernel, scale, sign,
+      sum.subarray(plane * size, (plane + 1) * size))
+  }
+}
+
+function shiftReply(n: number): ShiftReply {
+  return { dx: new Float64Array(n), dy: new Float64Array(n), confidence: new Float64Array(n), sure: new Uint8Array(n) }
+}

@@ -1,0 +1,214 @@
+/**
+ * Runs a capture through the passes of a recipe, keeps what each pass found under a content key, and makes
+ * stacks of any count. One engine per open capture. Knows neither threads nor storage: both are handed in.
+ */
+import type { Optics, Pass, RunEvent, StackImage } from '../api'
+import type { FrameReader } from '../decode/types'
+import { hasSimd } from '../kernels/index'
+import { makeRegisterPlan } from '../register/plan'
+import { restore } from '../restore/restore'
+import type { Recipe } from '../../shared/schemas/recipe'
+import type { Provenance, StackFigures } from '../../shared/schemas/run'
+import { engineName, lullVersion } from './version'
+import { averageImage } from './average'
+import { frameColumns } from './columns'
+import type { PassContext } from './context'
+import { Figurer } from './figures'
+import { FrameStore, type FrameStoreOptions } from './frames'
+import { gradePass, type Graded, type GradeProgress } from './grade-pass'
+import { stageKeys, type StageKeys } from './keys'
+import { ladderPass, type Ladder } from './ladder-pass'
+import { LadderKeeper } from './ladder-resume'
+import type { Pool } from './pool'
+import { growingPreview, singleFrame } from './preview'
+import { ProgressMeter } from './progress'
+import { proofs } from './proofs'
+import { countSetAside, rankFrames, type Ranking } from './rank'
+import { firstReference, refinePass, type Refined, type RefineProgress } from './refine-pass'
+import { Stacker } from './stacker'
+import { Stages, type StageStore } from './store'
+import { luminanceImage, surveyPass, type Surveyed } from './survey-pass'
+
+export interface EngineOptions extends Omit<FrameStoreOptions, 'shared'> {
+  pool: Pool
+  store?: StageStore | null
+  /** Least time between two savings of an unfinished pass, ms. */
+  checkpointMs?: number
+}
+
+/** Everything a finished run consists of. */
+export interface RunState {
+  recipe: Recipe
+  keys: StageKeys
+  surveyed: Surveyed
+  graded: Graded
+  refined: Refined
+  ranking: Ranking
+  ladder: Ladder
+  stacker: Stacker
+  figurer: Figurer
+}
+
+export class Engine {
+  readonly reader: FrameReader
+  readonly frames: FrameStore
+  readonly timings: Record<string, number> = {}
+  readonly #pool: Pool
+  readonly #stages: Stages
+  readonly #checkpointMs: number
+  readonly #results = new Map<string, { key: string, value: unknown }>()
+  #state: RunState | null = null
+  #emit: (event: RunEvent) => void = () => undefined
+
+  constructor(reader: FrameReader, options: EngineOptions) {
+    this.reader = reader
+    this.#pool = options.pool
+    this.#stages = new Stages(options.store ?? null)
+    this.#checkpointMs = options.checkpointMs ?? 5000
+    this.frames = new FrameStore(reader, { ...options, shared: options.pool.shared && options.pool.size > 1 })
+  }
+
+  /** The last finished run, or null. */
+  get state(): RunState | null { return this.#state }
+
+  /** Runs the stages that the recipe needs and that are not there. Rejects with the signal's reason when cancelled. */
+  async run(recipe: Recipe, optics: Optics | null, emit: (event: RunEvent) => void, signal: AbortSignal): Promise<RunState> {
+    const progress = new ProgressMeter(report => emit({ kind: 'progress', progress: report }))
+    const context: PassContext = { frames: this.frames, pool: this.#pool, signal, progress, emit }
+    const keys = await stageKeys(this.reader.facts, recipe)
+    const by = recipe.score.rankBy
+    const { seconds } = this.reader
+
+    this.#emit = emit
+    const surveyed = await this.#stage('survey', keys.survey, () => surveyPass(context, recipe))
+    this.#emitSurvey(surveyed, emit)
+
+    const graded = await this.#stage('grade', keys.grade, () => this.#grade(context, surveyed, recipe, keys))
+    emit({ kind: 'frames', columns: frameColumns(graded.table, null, null, by, seconds), complete: recipe.register.refineRounds === 0 })
+
+    const refined = await this.#stage('refine', keys.refine, () => this.#refine(context, surveyed, graded, recipe, keys))
+    const ranking = rankFrames({ ...graded.table, setAside: refined.shifts.setAside }, by)
+    emit({ kind: 'frames', columns: frameColumns(graded.table, refined.shifts, ranking.rank, by, seconds), complete: true })
+    emit({ kind: 'ranked', ranked: ranking.order.length, setAside: countSetAside(refined.shifts.setAside) })
+
+    const ladder = await this.#stage('ladder', keys.ladder, () => ladderPass(context, surveyed, refined.shifts, ranking, recipe.combine.kernel, {
+      keeper: this.#stages.keeps ? new LadderKeeper(this.#stages, keys.ladder) : null, checkpointMs: 2 * this.#checkpointMs,
+    }))
+    const same = this.#state?.ladder === ladder ? this.#state : null
+    const stacker = same?.stacker ?? new Stacker(ladder, ranking.order, refined.shifts, this.frames, surveyed.plan)
+    const figurer = new Figurer(stacker, surveyed, optics)
+    this.#state = { recipe, keys, surveyed, graded, refined, ranking, ladder, stacker, figurer }
+    const { counts, width, height, planes } = ladder
+    if (counts.length > 0) emit({ kind: 'ladder', ladder: { counts, width, height, planes } })
+    await this.#timed('proofs', () => proofs(this.#state!, averageImage(this.reader.facts, graded, surveyed.scale), context))
+    return this.#state
+  }
+
+  /** The mean of exactly the best `count` frames (dragging: or of the nearest rung); restored as the last run's recipe says where asked. */
+  async stack(count: number, restored: boolean, signal?: AbortSignal, dragging = false): Promise<StackImage> {
+    const { stacker, recipe } = this.#need()
+    const image = await stacker.stack(dragging ? stacker.nearAtHand(count) : count, signal)
+    if (!restored || recipe.restore.scales === 0) return image
+    const { samples, overshoot } = restore(image.samples, image.width, image.height, image.planes, recipe.restore)
+    return { ...image, samples, restored: true, overshoot }
+  }
+
+  async figures(count: number): Promise<StackFigures> {
+    const { figurer, stacker } = this.#need()
+    return figurer.of(await stacker.stack(count))
+  }
+
+  provenance(): Provenance {
+    return { lullVersion, path: hasSimd() ? 'simd' : 'plain', engine: engineName(), timings: { ...this.timings } }
+  }
+
+  /** True where the browser's store holds something of this capture to go on from. */
+  async resumable(): Promise<boolean> {
+    return await this.#stages.knows(this.reader.facts.fingerprint)
+  }
+
+  frame(index: number): Promise<StackImage> {
+    return singleFrame(this.frames, index, this.#result<Surveyed>('survey')?.plan ?? null)
+  }
+
+  average(): StackImage {
+    const { graded, surveyed } = this.#need()
+    return averageImage(this.reader.facts, graded, surveyed.scale)
+  }
+
+  close(): void {
+    this.frames.clear()
+    this.#results.clear()
+    this.#state = null
+    this.reader.close()
+  }
+
+  #need(): RunState {
+    if (!this.#state) throw new Error('Nothing is stacked yet: run the recipe first.')
+    return this.#state
+  }
+
+  #result<T>(stage: string): T | null {
+    return (this.#results.get(stage)?.value ?? null) as T | null
+  }
+
+  /** A stage's result from this page, from the store, or computed now. */
+  async #stage<T>(stage: Pass, key: string, compute: () => Promise<T>): Promise<T> {
+    const known = this.#results.get(stage)
+    if (known?.key === key) return known.value as T
+    const stored = await this.#stages.load<T>(stage, key)
+    const value = stored ?? await this.#timed(stage, compute)
+    this.#results.set(stage, { key, value })
+    if (!stored) await this.#stages.save(stage, key, value)
+    return value
+  }
+
+  async #timed<T>(pass: Pass, work: () => Promise<T>): Promise<T> {
+    const start = performance.now()
+    const value = await work()
+    const ms = performance.now() - start
+    this.timings[pass] = ms
+    this.#emit({ kind: 'timing', pass, startedAt: performance.timeOrigin + start, ms })
+    return value
+  }
+
+  async #grade(context: PassContext, surveyed: Surveyed, recipe: Recipe, keys: StageKeys): Promise<Graded> {
+    const first = firstReference(surveyed)
+    const register = recipe.register.refineRounds > 0 ? null : makeRegisterPlan(surveyed.survey, recipe, surveyed.plan.width, surveyed.plan.height, first.luminance, first.x, first.y)
+    const resume = await this.#stages.load<GradeProgress & { blockFrames: number }>('grading', keys.grade)
+    const by = recipe.score.rankBy
+    const graded = await gradePass(context, surveyed, {
+      register,
+      resume: resume?.blockFrames === this.frames.blockFrames ? resume : null,
+      checkpoint: async (progress) => {
+        await this.#stages.save('grading', keys.grade, { ...progress, blockFrames: this.frames.blockFrames })
+        await this.#stages.save('capture', this.reader.facts.fingerprint, { known: true })
+      },
+      checkpointMs: this.#checkpointMs,
+      onGrowth: async (table) => {
+        context.emit({ kind: 'frames', columns: frameColumns(table, null, null, by, this.reader.seconds), complete: false })
+        const image = await growingPreview(context, surveyed, table)
+        if (image) context.emit({ kind: 'preview', image })
+      },
+    })
+    await this.#stages.drop('grading', keys.grade)
+    await this.#stages.save('capture', this.reader.facts.fingerprint, { known: true })
+    return graded
+  }
+
+  async #refine(context: PassContext, surveyed: Surveyed, graded: Graded, recipe: Recipe, keys: StageKeys): Promise<Refined> {
+    const refined = await refinePass(context, surveyed, graded.table, recipe, {
+      resume: await this.#stages.load<RefineProgress>('refining', keys.refine),
+      checkpoint: progress => this.#stages.save('refining', keys.refine, progress),
+      checkpointMs: this.#checkpointMs,
+    })
+    await this.#stages.drop('refining', keys.refine)
+    return refined
+  }
+
+  #emitSurvey({ survey, score, plan }: Surveyed, emit: (event: RunEvent) => void): void {
+    const chosen = { blurPx: score.blurPx, windowPx: score.windowPx, centre: score.centre }
+    const preview = luminanceImage(survey.reference, plan.width, plan.height, 1)
+    emit({ kind: 'surveyed', target: survey.kind, chosen, noise: survey.noise, noSignal: survey.noSignal, preview })
+  }
+}

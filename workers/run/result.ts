@@ -1,0 +1,26 @@
+import { displayRange } from './stretch'
+import type { Recipe } from '../../shared/schemas/recipe'
+import { keepCount, proofFractions, type RunResult } from '../../shared/schemas/run'
+import type { Engine } from './engine'
+import { countSetAside } from './rank'
+
+/** Everything that a finished run states about itself. Throws where no run is finished. */
+export async function runResult(engine: Engine, recipe: Recipe, recipeHash: string): Promise<RunResult> {
+  const state = engine.state
+  if (!state) throw new Error('Nothing is stacked yet: run the recipe first.')
+  const { surveyed: { survey, score }, stacker, figurer, ladder, refined, graded } = state
+  const count = keepCount(recipe.keep.fraction, stacker.ranked)
+  const image = await stacker.stack(count)
+  const proofs = []
+  for (const fraction of proofFractions) proofs.push(figurer.of(await stacker.stack(keepCount(fraction, stacker.ranked))))
+  const { counts, width, height, planes } = ladder
+  return {
+    facts: engine.reader.facts, recipe, recipeHash, kind: survey.kind,
+    chosen: { blurPx: score.blurPx, windowPx: score.windowPx, centre: score.centre },
+    keep: { fraction: recipe.keep.fraction, count },
+    ranked: stacker.ranked, setAside: countSetAside(refined.shifts.setAside),
+    figures: figurer.of(image), proofs, average: figurer.ofAverage(engine.average(), graded.table.count),
+    ladder: { counts, width, height, planes },
+    stretch: displayRange(image), provenance: engine.provenance(),
+  }
+}

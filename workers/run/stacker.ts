@@ -1,0 +1,137 @@
+import type { StackImage } from '../api'
+import type { PreparePlan } from '../prepare/types'
+import { coveredBy, FIXED_FRAMES } from '../stack/accumulate'
+import { coverageCounts, coverageMarks, markCovered } from '../stack/coverage'
+import { addInto } from '../stack/fixed'
+import { fillUncovered, meanOf } from '../stack/mean'
+import type { ShiftTable } from './columns'
+import { addFrame, makeAdder, type Adder } from './computer'
+import type { FrameStore } from './frames'
+import type { Ladder } from './ladder-pass'
+
+/**
+ * Stacks of exactly the best n frames, for any n. It starts from whichever exact sum is nearest, the rung
+ * below, the rung above or the stack before, and adds or takes away the frames between; sums of integers
+ * come out the same by any way.
+ */
+export class Stacker {
+  readonly #ladder: Ladder
+  readonly #order: Int32Array
+  readonly #shifts: ShiftTable
+  readonly #frames: FrameStore
+  readonly #adder: Adder
+  readonly #sum: Float64Array
+  readonly #small: Int32Array
+  #count = 0
+  #queue: Promise<unknown> = Promise.resolve()
+
+  constructor(ladder: Ladder, order: Int32Array, shifts: ShiftTable, frames: FrameStore, plan: PreparePlan) {
+    const size = ladder.planes * ladder.width * ladder.height
+    this.#ladder = ladder
+    this.#order = order
+    this.#shifts = shifts
+    this.#frames = frames
+    this.#adder = makeAdder({ plan, planes: ladder.planes, scale: ladder.scale, kernel: ladder.kernel }, 1)
+    this.#sum = new Float64Array(size)
+    this.#small = this.#adder.kernels.ints(size)
+  }
+
+  /** Frames that can be stacked. */
+  get ranked(): number { return this.#order.length }
+
+  /** The mean of the best `count` frames; count is clamped to what there is. */
+  stack(count: number, signal?: AbortSignal): Promise<StackImage> {
+    const wanted = Math.max(0, Math.min(this.ranked, Math.round(count)))
+    const made = this.#queue.then(async () => {
+      signal?.throwIfAborted()
+      await this.#moveTo(wanted, signal)
+      return this.#image(wanted)
+    })
+    this.#queue = made.catch(() => undefined)
+    return made
+  }
+
+  /** The count nearest to `count` whose stack needs no reading: itself where all frames between are in memory, else that of a rung. */
+  nearAtHand(count: number): number {
+    const wanted = Math.max(0, Math.min(this.ranked, Math.round(count)))
+    const from = this.#nearest(wanted).count
+    for (let place = Math.min(from, wanted); place < Math.max(from, wanted); place++) {
+      if (!this.#frames.holds(this.#order[place]!)) {
+        return this.#ladder.counts.reduce((best, rung) => Math.abs(rung - wanted) < Math.abs(best - wanted) ? rung : best, this.#ladder.counts[0]!)
+      }
+    }
+    return wanted
+  }
+
+  async #moveTo(wanted: number, signal?: AbortSignal): Promise<void> {
+    const from = this.#nearest(wanted)
+    if (from.sum && from.sum !== this.#sum) this.#sum.set(from.sum)
+    else if (!from.sum) this.#sum.fill(0)
+    this.#count = from.count
+    while (this.#count !== wanted) {
+      const step = Math.max(-FIXED_FRAMES, Math.min(FIXED_FRAMES, wanted - this.#count))
+      await this.#move(step, signal)
+    }
+  }
+
+  /** Adds the next `step` frames of the order, or takes the last -step away. All or nothing. */
+  async #move(step: number, signal?: AbortSignal): Promise<void> {
+    const sign = step > 0 ? 1 : -1
+    const first = step > 0 ? this.#count : this.#count + step
+    this.#small.fill(0)
+    for (let place = first; place < first + Math.abs(step); place++) {
+      const frame = this.#order[place]!
+      const batch = await this.#frames.frame(frame, signal)
+      addFrame(this.#adder, batch, 0, this.#shifts.dx[frame]!, this.#shifts.dy[frame]!, sign, this.#small)
+    }
+    addInto(this.#sum, this.#small)
+    this.#count += step
+  }
+
+  #nearest(wanted: number): { count: number, sum: Float64Array | null } {
+    let best: { count: number, sum: Float64Array | null } = { count: 0, sum: null }
+    const consider = (count: number, sum: Float64Array) => {
+      if (Math.abs(count - wanted) < Math.abs(best.count - wanted)) best = { count, sum }
+    }
+    consider(this.#count, this.#sum)
+    this.#ladder.counts.forEach((count, k) => consider(count, this.#ladder.sums[k]!))
+    return best
+  }
+
+  #image(count: number): StackImage {
+    const { width, height, planes, scale } = this.#ladder
+    const covered = this.coverage(count)
+    const samples = meanOf(this.#sum, covered, scale, planes)
+    fillUncovered(samples, covered, width, height, planes)
+    return { width, height, planes, samples, count, restored: false }
+  }
+
+  /** How many of the best `count` frames cover each pixel; `every` second one from the first for a half. */
+  coverage(count: number, every: 1 | 2 = 1): Int32Array {
+    const { width, height, kernel } = this.#ladder
+    const marks = coverageMarks(width, height)
+    for (let place = 0; place < count; place += every) {
+      const frame = this.#order[place]!
+      markCovered(marks, width, coveredBy(kernel, width, height, this.#shifts.dx[frame]!, this.#shifts.dy[frame]!), 1)
+    }
+    return coverageCounts(marks, width, height)
+  }
+
+  /** The two half stacks (odd ranks, even ranks) of rung k; null where a half would be empty. */
+  halves(rung: number): [Float32Array, Float32Array] | null {
+    const { counts, sums, halves, scale, planes } = this.#ladder
+    if (counts[rung]! < 2) return null
+    const all = this.coverage(counts[rung]!)
+    const first = this.coverage(counts[rung]!, 2)
+    const one = meanOf(Float64Array.from(halves[rung]!), first, scale, planes)
+    const rest = Float64Array.from(sums[rung]!, (value, i) => value - halves[rung]![i]!)
+    return [one, meanOf(rest, all.map((n, i) => n - first[i]!), scale, planes)]
+  }
+
+  /** The rung whose count is nearest to `count` and at most it, or the first. */
+  rungBelow(count: number): number {
+    let rung = 0
+    this.#ladder.counts.forEach((n, k) => { if (n <= count) rung = k })
+    return rung
+  }
+}

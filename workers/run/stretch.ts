@@ -1,0 +1,34 @@
+import type { StackImage } from '../api'
+import type { DisplayStretch } from '../../shared/schemas/run'
+
+/** Samples looked at for the range; spread evenly over the image. */
+const LOOK = 65_536
+
+/**
+ * A first display stretch: black at the 1st percentile (the sky or the dark side), white at the brightest
+ * of the looked-at samples less 0.02 %, gamma 1 for extended detail. Monotone in the data, deterministic.
+ */
+export function displayRange({ samples }: StackImage): DisplayStretch {
+  const step = Math.max(1, Math.floor(samples.length / LOOK))
+  const some: number[] = []
+  for (let i = 0; i < samples.length; i += step) if (Number.isFinite(samples[i]!)) some.push(samples[i]!)
+  some.sort((a, b) => a - b)
+  if (some.length === 0) return { black: 0, white: 1, gamma: 1 }
+  const black = some[Math.floor(0.01 * (some.length - 1))]!
+  const white = some[Math.floor(0.9998 * (some.length - 1))]!
+  return { black, white: white > black ? white : black + 1, gamma: 1 }
+}
+
+/** 8-bit view of a stack: interleaved grey or R, G, B. The same formula as the canvas: ((v - black) / (white - black))^(1/gamma). */
+export function view8({ samples, width, height, planes }: StackImage, { black, white, gamma }: DisplayStretch): Uint8Array<ArrayBuffer> {
+  const size = width * height
+  const out = new Uint8Array(size * planes)
+  const range = white - black || 1
+  for (let plane = 0; plane < planes; plane++) {
+    for (let i = 0; i < size; i++) {
+      const level = Math.min(1, Math.max(0, (samples[plane * size + i]! - black) / range))
+      out[i * planes + plane] = Math.round(255 * (gamma === 1 ? level : level ** (1 / gamma)))
+    }
+  }
+  return out
+}
