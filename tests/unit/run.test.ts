@@ -27,6 +27,8 @@ async function bytesOf(engine: Engine) {
     order: ranking.order, average: engine.average().samples,
     sums: ladder.sums, stacks: await Promise.all([1, 7, 20, 33, 150].map(async n => (await engine.stack(n, false)).samples)),
   }
+  const digest = (value: unknown) => createHash('sha256').update(pack(value)).digest('hex')
+  return Object.fromEntries(Object.entries(all).map(([name, value]) => [name, digest(value)]))
 }
 
 describe('a run', () => {

@@ -75,7 +75,7 @@ export class FrameStore {
   }
 
   /** Blocks in the given order, each read while the one before is worked on. */
-  async *blocks(order: readonly number[], signal?: AbortSignal): AsyncGenerator<Batch> {
+  async* blocks(order: readonly number[], signal?: AbortSignal): AsyncGenerator<Batch> {
     let next = order.length > 0 ? this.#ahead(order[0]!, signal) : null
     for (let i = 0; i < order.length; i++) {
       const current = next!

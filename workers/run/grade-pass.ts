@@ -90,9 +90,12 @@ function fill(table: GradeTable, first: number, reply: GradeReply, reference: { 
   for (let i = 0; i < reply.flags.length; i++) {
     const flags = reply.flags[i]!
     const unsure = reply.shifts !== null && reply.shifts.sure[i] === 0
-    table.setAside[first + i] = flags & EMPTY ? reasonCode('empty')
-      : flags & SATURATED ? reasonCode('saturated')
-        : flags & OUTSIDE ? reasonCode('out-of-field')
+    table.setAside[first + i] = flags & EMPTY
+      ? reasonCode('empty')
+      : flags & SATURATED
+        ? reasonCode('saturated')
+        : flags & OUTSIDE
+          ? reasonCode('out-of-field')
           : unsure ? reasonCode('unsure') : 0
   }
 }

@@ -160,4 +160,3 @@ async function registerFrames(context: PassContext, surveyed: Surveyed, recipe: 
   await feed.drain()
   progress.end()
 }
-

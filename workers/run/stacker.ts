@@ -128,6 +128,9 @@ export class Stacker {
     return [one, meanOf(rest, all.map((n, i) => n - first[i]!), scale, planes)]
   }
 
+  /** Frames in the stack of a rung. */
+  countOf(rung: number): number { return this.#ladder.counts[rung] ?? 0 }
+
   /** The rung whose count is nearest to `count` and at most it, or the first. */
   rungBelow(count: number): number {
     let rung = 0
