@@ -1,6 +1,5 @@
 import type { Optics, StackImage } from '../api'
-import { quantileInPlace } from '../score/blocks'
-import { laplacianVariance } from '../score/measures'
+import { halvesNoise, stackFigures, stackLuminance } from '../score/figures'
 import type { StackFigures } from '../../shared/schemas/run'
 import type { Stacker } from './stacker'
 import type { Surveyed } from './survey-pass'
@@ -9,16 +8,17 @@ import type { Surveyed } from './survey-pass'
 export class Figurer {
   readonly #stacker: Stacker
   readonly #surveyed: Surveyed
+  readonly #optics: Optics | null
   #noise = new Map<number, number>()
 
-  constructor(stacker: Stacker, surveyed: Surveyed, _optics: Optics | null) {
+  constructor(stacker: Stacker, surveyed: Surveyed, optics: Optics | null) {
     this.#stacker = stacker
     this.#surveyed = surveyed
+    this.#optics = optics
   }
 
   of(image: StackImage): StackFigures {
-    const noise = this.#noiseOf(image.count)
-    return this.#figures(image, image.count / Math.max(1, this.#stacker.ranked), noise)
+    return this.#figures(image, image.count / Math.max(1, this.#stacker.ranked), this.#noiseOf(image.count))
   }
 
   /** Figures of the plain unregistered average of `frames` frames; its noise is that of one frame over their root. */
@@ -26,18 +26,10 @@ export class Figurer {
     return this.#figures(image, 1, this.#surveyed.survey.noise / Math.sqrt(Math.max(1, frames)))
   }
 
-  #figures({ samples, width, height, planes, count }: StackImage, fraction: number, noise: number): StackFigures {
-    const luminance = planes === 1 ? samples : Float32Array.from({ length: width * height }, (_, i) => 0.25 * (samples[i]! + 2 * samples[i + width * height]! + samples[i + 2 * width * height]!))
-    const sorted = luminance.slice()
-    const background = quantileInPlace(sorted, sorted.length, 0.2)
-    let peak = 0
-    let flux = 0
-    for (const value of luminance) {
-      if (value - background > peak) peak = value - background
-      flux += value - background
-    }
-    const sharpness = flux > 0 ? laplacianVariance(luminance, width, height) * width * height / (flux * flux) : 0
-    return { count, fraction, sharpness, noise, peak, signalToNoise: noise > 0 ? peak / noise : 0, fwhmPx: null, fwhmErrPx: null, strehl: null }
+  #figures({ samples, planes, count }: StackImage, fraction: number, noise: number): StackFigures {
+    const { plan, score } = this.#surveyed
+    const mosaic = planes === 1 && plan.mosaic !== 'none'
+    return stackFigures({ stack: samples, planes, mosaic, noise, count, fraction, plan: score, optics: this.#optics })
   }
 
   /** Noise of the mean of `count` frames: from the halves of the rung below, scaled by the root of the counts. */
@@ -54,9 +46,9 @@ export class Figurer {
   #measure(rung: number): number | null {
     const halves = this.#stacker.halves(rung)
     if (!halves) return null
-    const difference = halves[0].map((value, i) => value - halves[1][i]!)
-    const middle = quantileInPlace(difference.slice(), difference.length, 0.5)
-    const off = difference.map(value => Math.abs(value - middle))
-    return 1.4826 * quantileInPlace(off, off.length, 0.5) / 2
+    const { width, height } = this.#surveyed.plan
+    const planes = halves[0].length === width * height ? 1 : 3
+    const [a, b] = halves.map(half => stackLuminance(half, planes, false, width, height)) as [Float32Array, Float32Array]
+    return halvesNoise(a, b)
   }
 }

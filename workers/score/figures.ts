@@ -2,6 +2,7 @@
 import type { OpticsLike } from '../../shared/optics'
 import { idealPeakShare } from '../../shared/optics'
 import type { StackFigures } from '../../shared/schemas/run'
+import { binomial } from '../prepare/frame'
 import { starImages } from '../register/reference'
 import { quantileInPlace } from './blocks'
 import { halfWidth } from './halfwidth'
@@ -13,35 +14,40 @@ export interface FiguresInput {
   /** Mean stack, planes × height × width. */
   stack: Float32Array
   planes: 1 | 3
-  /** Means of two halves of the same frames (every other frame by rank), for an honest noise; null where not made. */
-  halves: readonly [Float32Array, Float32Array] | null
+  /** True for a plain average that still is a mosaic (one plane). */
+  mosaic: boolean
+  /**
+   * Where the noise comes from: means of two halves of the same frames (every other one), a standard deviation found
+   * elsewhere, or null: from the stack itself, which misses what resampling has smoothed.
+   */
+  noise: readonly [Float32Array, Float32Array] | number | null
   count: number
   fraction: number
-  /** The run's plan; its centre is replaced by (refX, refY). */
   plan: ScorePlan
-  /** Place of the target in the stack, px. */
-  refX: number
-  refY: number
   optics: OpticsLike | null
 }
 
-/** Luminance as judged: the plane itself, or (R + 2G + B)/4. */
-export function stackLuminance(stack: Float32Array, planes: 1 | 3, size: number): Float32Array {
-  if (planes === 1) return stack
+/** Luminance as judged: the plane itself, (R + 2G + B)/4, or the same from a mosaic. */
+export function stackLuminance(stack: Float32Array, planes: 1 | 3, mosaic: boolean, width: number, height: number): Float32Array {
+  const size = width * height
+  if (planes === 1 && !mosaic) return stack
   const out = new Float32Array(size)
+  if (planes === 1) {
+    binomial(stack, width, height, out)
+    return out
+  }
   for (let i = 0; i < size; i++) out[i] = 0.25 * (stack[i]! + 2 * stack[size + i]! + stack[2 * size + i]!)
   return out
 }
 
 export function stackFigures(input: FiguresInput): StackFigures {
-  const { planes, plan, refX, refY, optics } = input
+  const { planes, plan, mosaic, optics } = input
   const { width, height } = plan
   const size = width * height
-  const image = stackLuminance(input.stack, planes, size)
-  const halves = input.halves?.map(half => stackLuminance(half, planes, size)) ?? null
-  const noise = halves ? halvesNoise(halves[0]!, halves[1]!, plan, refX, refY) : frameNoise(image, width, height)
+  const image = stackLuminance(input.stack, planes, mosaic, width, height)
+  const noise = noiseOf(input, image)
   // The stack's own shift is zero: a field's guide has nothing to find here.
-  const scorer = createScorer({ ...plan, noise, guide: null, centre: { x: refX, y: refY } })
+  const scorer = createScorer({ ...plan, noise, guide: null })
   const score = emptyScore()
   scorer.score(image, 0, score)
   const base = {
@@ -69,27 +75,22 @@ export function stackFigures(input: FiguresInput): StackFigures {
 
 const finite = (value: number): number => (Number.isFinite(value) ? value : 0)
 
+function noiseOf({ noise, planes, mosaic, plan }: FiguresInput, image: Float32Array): number {
+  if (typeof noise === 'number') return noise
+  const { width, height } = plan
+  if (noise === null) return frameNoise(image, width, height)
+  const [a, b] = noise.map(half => stackLuminance(half, planes, mosaic, width, height)) as [Float32Array, Float32Array]
+  return halvesNoise(a, b)
+}
+
 /**
- * Noise of the mean stack: scatter of half the difference of two half stacks, robust (median absolute deviation),
- * beside the target where there is a beside. The target cancels in the difference, as far as both halves see it alike.
+ * Noise of the mean of two half stacks: scatter of half their difference, robust (median absolute deviation). The
+ * target cancels, as far as both halves see it alike; where they differ at a star's core the median does not care.
  */
-function halvesNoise(a: Float32Array, b: Float32Array, plan: ScorePlan, refX: number, refY: number): number {
-  const { width, height, windowPx } = plan
-  const values = new Float32Array(width * height)
-  const collect = (outside: number): number => {
-    let n = 0
-    for (let y = 0; y < height; y++) {
-      for (let x = 0; x < width; x++) {
-        if (Math.max(Math.abs(x - refX), Math.abs(y - refY)) < outside) continue
-        const i = y * width + x
-        values[n++] = 0.5 * (a[i]! - b[i]!)
-      }
-    }
-    return n
-  }
-  let n = plan.form === 'field' ? collect(0) : collect(0.5 * windowPx)
-  if (n < 400) n = collect(0.3 * Math.min(width, height))
-  if (n < 100) n = collect(0)
+export function halvesNoise(a: Float32Array, b: Float32Array): number {
+  const n = a.length
+  const values = new Float32Array(n)
+  for (let i = 0; i < n; i++) values[i] = 0.5 * (a[i]! - b[i]!)
   const middle = quantileInPlace(values, n, 0.5)
   for (let i = 0; i < n; i++) values[i] = Math.abs(values[i]! - middle)
   return 1.4826 * quantileInPlace(values, n, 0.5)
