@@ -84,6 +84,10 @@ describe('transforms', () => {
       }
     }
     expect(copy[2 * (5 * size + 3)]).toBeCloseTo(re, 9)
+    // Only what is asked for: five rows across the end, with the full band.
+    const part = Float64Array.from(copy)
+    transform.inverse(part, { start: 13, count: 5 })
+    for (const row of [13, 15, 0, 1]) for (let i = 0; i < 2 * size; i++) expect(part[2 * size * row + i]).toBeCloseTo(data[2 * size * row + i]!, 12)
     transform.inverse(copy)
     for (let i = 0; i < data.length; i++) expect(copy[i]).toBeCloseTo(data[i]!, 12)
   })

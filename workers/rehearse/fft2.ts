@@ -1,23 +1,32 @@
 /** Square two-dimensional complex transforms over fft.js, with tables and scratch made once. */
 import FFT from 'fft.js'
 
+/** Rows `start` … `start + count − 1`, counted round the end. */
+export interface Rows { start: number, count: number }
+
 export interface SquareTransform {
   readonly size: number
-  /** 2 × size² interleaved complex numbers, row-major; transformed in place. Rows outside [firstRow, lastRow] must be zero. */
-  forward(data: Float64Array, firstRow?: number, lastRow?: number): void
-  /** Inverse, divided by size². */
-  inverse(data: Float64Array): void
+  /**
+   * 2 × size² interleaved complex numbers, row-major; transformed in place. Only the rows named may hold anything; only
+   * columns of frequency −band … band are transformed, the others hold nothing useful afterwards.
+   */
+  forward(data: Float64Array, rows?: Rows, band?: number): void
+  /** Inverse, divided by size². Only frequencies −band … band across may hold anything; only the rows named are made. */
+  inverse(data: Float64Array, rows?: Rows, band?: number): void
 }
 
 /** `size` is a power of two ≥ 2. */
 export function createSquareTransform(size: number): SquareTransform {
   if (size < 2 || (size & (size - 1)) !== 0) throw new RangeError(`A transform needs a power of two, not ${size}.`)
   const fft = new FFT(size)
+  const mask = size - 1
   const line = new Float64Array(2 * size)
   const answer = new Float64Array(2 * size)
+  const all: Rows = { start: 0, count: size }
 
-  const rows = (data: Float64Array, from: number, to: number, inverse: boolean) => {
-    for (let row = from; row <= to; row++) {
+  const alongRows = (data: Float64Array, { start, count }: Rows, inverse: boolean) => {
+    for (let i = 0; i < count; i++) {
+      const row = (start + i) & mask
       const view = data.subarray(2 * size * row, 2 * size * (row + 1))
       line.set(view)
       if (inverse) fft.inverseTransform(answer, line)
@@ -25,10 +34,13 @@ export function createSquareTransform(size: number): SquareTransform {
       view.set(answer)
     }
   }
-  const columns = (data: Float64Array, from: number, to: number, inverse: boolean) => {
+  const alongColumns = (data: Float64Array, { start, count }: Rows, band: number, inverse: boolean) => {
+    if (count < size) line.fill(0)
     for (let column = 0; column < size; column++) {
-      if (from > 0 || to < size - 1) line.fill(0)
-      for (let row = from, at = 2 * (from * size + column); row <= to; row++, at += 2 * size) {
+      if (column > band && column < size - band) continue
+      for (let i = 0; i < count; i++) {
+        const row = (start + i) & mask
+        const at = 2 * (row * size + column)
         line[2 * row] = data[at]!
         line[2 * row + 1] = data[at + 1]!
       }
@@ -42,13 +54,13 @@ export function createSquareTransform(size: number): SquareTransform {
   }
   return {
     size,
-    forward(data, firstRow = 0, lastRow = size - 1) {
-      rows(data, firstRow, lastRow, false)
-      columns(data, firstRow, lastRow, false)
+    forward(data, rows = all, band = size / 2) {
+      alongRows(data, rows, false)
+      alongColumns(data, rows, band, false)
     },
-    inverse(data) {
-      rows(data, 0, size - 1, true)
-      columns(data, 0, size - 1, true)
+    inverse(data, rows = all, band = size / 2) {
+      alongColumns(data, all, band, true)
+      alongRows(data, rows, true)
     },
   }
 }

@@ -11,8 +11,6 @@ export interface Pupil {
   readonly x: Int16Array
   readonly y: Int16Array
   readonly weight: Float64Array
-  readonly firstRow: number
-  readonly lastRow: number
   /** Diffraction-limited peak of a point-spread function of sum 1. */
   readonly peak: number
   /** Sum of the squared transmission. */
@@ -55,7 +53,6 @@ export function createPupil(size: number, diameter: number, obstruction: number,
   return {
     size, diameter, screenStep,
     x: Int16Array.from(x), y: Int16Array.from(y), weight: Float64Array.from(weight),
-    firstRow: 0, lastRow: y[y.length - 1]! - y[0]!,
     peak: sum * sum / (size * size * power), power,
   }
 }
@@ -66,7 +63,8 @@ export interface PsfMaker {
 }
 
 export function createPsfMaker(pupil: Pupil, transform: SquareTransform = createSquareTransform(pupil.size)): PsfMaker {
-  const { size, x, y, weight, lastRow } = pupil
+  const { size, x, y, weight } = pupil
+  const rows = { start: 0, count: y[y.length - 1]! - y[0]! + 1 }
   const field = new Float64Array(2 * size * size)
   // Rows start at the pupil's first one and columns wrap: that only turns the field's phase, not its intensity.
   const top = y[0]!
@@ -79,7 +77,7 @@ export function createPsfMaker(pupil: Pupil, transform: SquareTransform = create
         field[at] = weight[i]! * Math.cos(phase[i]!)
         field[at + 1] = weight[i]! * Math.sin(phase[i]!)
       }
-      transform.forward(field, 0, lastRow)
+      transform.forward(field, rows)
       for (let i = 0, at = 0; i < psf.length; i++, at += 2) psf[i]! += gain * (field[at]! * field[at]! + field[at + 1]! * field[at + 1]!)
     },
   }

@@ -6,7 +6,7 @@ import { createAir } from './air'
 import { createCourse } from './motion'
 import { createDetector, mosaicPlanes } from './detector'
 import { createPsfMaker, createPupil, psfPeak } from './pupil'
-import { createSquareTransform } from './fft2'
+import { createSquareTransform, type Rows } from './fft2'
 import { rehearsalGeometry } from './geometry'
 import { sceneTransfer } from './scene'
 
@@ -39,13 +39,18 @@ export function createSimulator(given: RehearsalSpec): Simulator {
   const colours = wavelengths.map((wavelength) => {
     const ratio = optics.wavelengthNm / wavelength
     const pupil = createPupil(psfSize, diameter * ratio, optics.obstruction, ratio === 1 ? 1 : 1 / ratio)
-    return { ratio, pupil, maker: createPsfMaker(pupil, psfTransform), phase: new Float64Array(pupil.x.length) }
+    return {
+      ratio, pupil, maker: createPsfMaker(pupil, psfTransform), phase: new Float64Array(pupil.x.length),
+      /** Cut-off frequency D/λ in cycles per canvas, and one for the grey edge. */
+      band: Math.min(canvasSize / 2, Math.ceil(canvasSize * ratio / lambdaOverDPx) + 2),
+    }
   })
   const judged = colours.length === 3 ? 1 : 0
   const planeOf = mosaic === 'none' ? null : mosaicPlanes(mosaic, spec.width, spec.height)
   // An even number of fine pixels has its middle between two of them.
   const binOffset = oversample % 2 === 0 ? 0.5 : 0
   const work = new Float64Array(2 * canvasSize * canvasSize)
+  const frameRows: Rows = { start: (-geometry.middleY * oversample - ((oversample - 1) >> 1)) & (canvasSize - 1), count: Math.min(canvasSize, spec.height * oversample) }
   const images = [0, 1].map(() => new Float64Array(spec.width * spec.height))
 
   /** The point-spread functions of one exposure. The fraction of a pixel of the target's place is in them, as a slope of the phase. */
@@ -114,6 +119,30 @@ export function createSimulator(given: RehearsalSpec): Simulator {
     }
   }
 
+  /** Rows that hold anything of either point-spread function. */
+  function rowsOf(exposures: Exposure[]): Rows {
+    const shifts = exposures.map(({ shiftY }) => shiftY)
+    const start = Math.min(...shifts) - psfSize / 2
+    return { start: start & (canvasSize - 1), count: Math.min(canvasSize, Math.max(...shifts) + psfSize / 2 - start) }
+  }
+
+  /** The image's transform: the scene's times the point-spread function's, which is nothing beyond the cut-off frequency. */
+  function multiply(scene: Float64Array, band: number): void {
+    for (let row = 0; row < canvasSize; row++) {
+      const beyond = row > band && row < canvasSize - band
+      for (let column = 0, at = 2 * row * canvasSize; column < canvasSize; column++, at += 2) {
+        if (beyond || (column > band && column < canvasSize - band)) {
+          work[at] = work[at + 1] = 0
+          continue
+        }
+        const re = work[at]!
+        const im = work[at + 1]!
+        work[at] = re * scene[at]! - im * scene[at + 1]!
+        work[at + 1] = re * scene[at + 1]! + im * scene[at]!
+      }
+    }
+  }
+
   // Two frames share one complex transform, one as real and one as imaginary part; pairs are fixed by frame number, so
   // that rounding does not depend on which frames are asked for.
   let pair: { first: number, truths: FrameTruth[] } | null = null
@@ -124,15 +153,10 @@ export function createSimulator(given: RehearsalSpec): Simulator {
       work.fill(0)
       lay(exposures[0]!, colour, 0)
       lay(exposures[1]!, colour, 1)
-      canvas.forward(work)
-      const scene = transfer.planes[Math.min(colour, transfer.planes.length - 1)]!
-      for (let at = 0; at < work.length; at += 2) {
-        const re = work[at]!
-        const im = work[at + 1]!
-        work[at] = re * scene[at]! - im * scene[at + 1]!
-        work[at + 1] = re * scene[at + 1]! + im * scene[at]!
-      }
-      canvas.inverse(work)
+      const { band } = colours[colour]!
+      canvas.forward(work, rowsOf(exposures), band)
+      multiply(transfer.planes[Math.min(colour, transfer.planes.length - 1)]!, band)
+      canvas.inverse(work, frameRows, band)
       gather(images[0]!, 0, colour)
       gather(images[1]!, 1, colour)
     }
