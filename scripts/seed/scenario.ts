@@ -40,7 +40,7 @@ export type InstrumentKey = keyof typeof instruments
 export const targets: z.input<typeof targetBody>[] = [
   { name: 'Tern double', kind: 'star', note: 'A pair for every telescope of the club: 1.24″, the companion 0.9 magnitudes fainter. Invented.' },
   { name: 'Larch triple', kind: 'star', note: 'Two bright stars at 2.16″ and a faint third between them. Invented.' },
-  { name: 'Saffron planet', kind: 'extended', note: 'A banded disc of 15.5″ with a pale oval in the north. Invented.' },
+  { name: 'Saffron planet', kind: 'extended', note: 'A banded disc of 17″ with a pale oval in the north. Invented.' },
   { name: 'Quarry patch', kind: 'extended', note: 'A worn ring with a group of peaks, under a low sun. Invented.' },
 ]
 

@@ -32,8 +32,8 @@ const triple: RehearsalSpec = {
 const planet: RehearsalSpec = {
   ...double, name: 'Saffron planet', seed: 2303, width: 160, height: 160, frames: 300, start: '2026-11-15T01:12:44.000Z', exposureMs: 8, intervalMs: 15,
   optics: { apertureMm: 280, focalLengthMm: 4200, pixelSizeUm: 2.9, obstruction: 0.3, wavelengthNm: 530 },
-  air: { ...double.air, apertureOverR0: 4, gusts: { amplitude: 0.35, periodS: 3 } },
-  scene: { kind: 'planet', seed: 12, diameterArcsec: 15.5, poleDeg: 17, tiltDeg: 3, fluxElectrons: 330 },
+  air: { ...double.air, apertureOverR0: 3.5, gusts: { amplitude: 0.35, periodS: 3 } },
+  scene: { kind: 'planet', seed: 12, diameterArcsec: 17, poleDeg: 17, tiltDeg: 3, fluxElectrons: 340 },
   motion: { ...steady, startX: 3, startY: 2, rateXPxPerS: -0.8, rateYPxPerS: 0.5, periodicPx: 2, periodS: 4, shakePx: 0.2 },
   dropShare: 0,
   detector: { bitDepth: 8, gain: 0.62, bias: 5, readNoise: 2, skyElectrons: 0.2, hotPixels: 8, hotElectrons: [40, 200], mosaic: 'RGGB' },
