@@ -1,17 +1,18 @@
 /**
- * Seeds the demo into a running server: real simulation, the real core, the real API. Run by the start command on the
- * first start; can be killed at any moment and run again, and then makes what is missing.
+ * Seeds the demo into a running server: real simulation, the real core, the real API. The start command runs it each
+ * time; it ends at once where the demo is complete. It can be killed at any moment, and then makes what is missing.
  *
- *   LULL_BASE_URL=http://127.0.0.1:3000 tsx scripts/seed/index.ts
+ *   LULL_BASE_URL=http://127.0.0.1:3000 DATABASE_URL=mysql://… tsx scripts/seed/index.ts
  */
 import type { Club } from '../../shared/api/account'
 import { nightOf } from './dates'
 import { fileRun, findRun, type RunIdentity } from './filing'
 import { ensureInstruments, ensureRecipes, ensureTargets, type Members } from './library'
 import { Member } from './member'
+import { belongsToOthers, ensurePeople, isSeeded, markSeeded, openDatabase } from './people'
 import { createProgress } from './progress'
 import { ensureLink, ensureReview, reviewPlans } from './reviews'
-import { captures, instruments, people, recipes, runs, type CaptureKey, type Person, type RunPlan } from './scenario'
+import { captures, instruments, people, recipes, runs, type CaptureKey, type RunPlan } from './scenario'
 import { openRehearsal, workThrough, type OpenedCapture, type WorkedRun } from './work'
 
 const LINKED_RUN = 'first-triple'
@@ -82,19 +83,30 @@ function release(index: number, opened: Map<CaptureKey, OpenedCapture>): void {
   }
 }
 
-export function signIns(): string {
-  return (Object.keys(people) as Person[]).map(key => `  ${people[key].role.padEnd(10)} ${people[key].email.padEnd(24)} ${people[key].password}`).join('\n')
+async function main(): Promise<void> {
+  const base = process.env.LULL_BASE_URL
+  const database = process.env.DATABASE_URL ?? process.env.NUXT_DATABASE_URL
+  if (!base || !database) throw new Error('LULL_BASE_URL and DATABASE_URL must say where the server and its database are.')
+  const db = openDatabase(database)
+  try {
+    if (await isSeeded(db)) return
+    if (await belongsToOthers(db)) {
+      console.log('This database belongs to a club already; the demo is left out.')
+      return
+    }
+    await ensurePeople(db)
+    await seed(base)
+    await markSeeded(db)
+  }
+  finally {
+    await db.destroy()
+  }
 }
 
-const base = process.env.LULL_BASE_URL
-if (!base) {
-  console.error('Say where the server listens: LULL_BASE_URL=http://127.0.0.1:3000')
-  process.exit(2)
-}
 try {
-  await seed(base)
+  await main()
 }
 catch (reason) {
-  console.error(`\nThe demo is not complete: ${(reason as Error).message}\nRun the same command again: it goes on with what is missing.`)
-  process.exit(1)
+  console.error(`\nThe demo is not complete: ${(reason as Error).message}\nStart Lull again: the seeding goes on with what is missing.`)
+  process.exitCode = 1
 }
