@@ -20,7 +20,7 @@ import { stageKeys, type StageKeys } from './keys'
 import { ladderPass, type Ladder } from './ladder-pass'
 import { LadderKeeper } from './ladder-resume'
 import type { Pool } from './pool'
-import { growingPreview, singleFrame } from './preview'
+import { growingPreview, shownAverage, singleFrame } from './preview'
 import { ProgressMeter } from './progress'
 import { proofs } from './proofs'
 import { countSetAside, rankFrames, type Ranking } from './rank'
@@ -100,7 +100,7 @@ export class Engine {
     this.#state = { recipe, keys, surveyed, graded, refined, ranking, ladder, stacker, figurer }
     const { counts, width, height, planes } = ladder
     if (counts.length > 0) emit({ kind: 'ladder', ladder: { counts, width, height, planes } })
-    await this.#timed('proofs', () => proofs(this.#state!, averageImage(this.reader.facts, graded, surveyed.scale), context))
+    await this.#timed('proofs', () => proofs(this.#state!, this.averageShown(), context))
     return this.#state
   }
 
@@ -134,6 +134,11 @@ export class Engine {
   average(): StackImage {
     const { graded, surveyed } = this.#need()
     return averageImage(this.reader.facts, graded, surveyed.scale)
+  }
+
+  /** The average as it is shown and judged beside stacks: hot pixels repaired, a mosaic as colour. */
+  averageShown(): StackImage {
+    return shownAverage(this.average(), this.#need().surveyed.plan)
   }
 
   close(): void {

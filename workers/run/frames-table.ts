@@ -1,10 +1,8 @@
 import type { FrameColumns } from '../api'
-
-/** The columns of a filed frame table (CSV with the header below). Fields that are empty are NaN. */
-export const frameTableHeader = 'frame,score,laplacian,peak,x,y,dx,dy,rank,kept'
+import { frameTableHeader } from '../encode/csv'
 
 /**
- * Reads a frame table. Rows may come in any order; a frame without a rank was set aside (the table does not
+ * The columns of a filed frame table; fields that are empty are NaN. Rows may come in any order; a frame without a rank was set aside (the table does not
  * say why, so its code is that of the last reason).
  * @throws Error with a plain message where the text is no frame table.
  */

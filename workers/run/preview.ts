@@ -61,3 +61,13 @@ export async function singleFrame(frames: FrameStore, index: number, plan: Prepa
   else prepareLuminance(samples, offset, plan, out)
   return { width, height, planes: shown, samples: out, count: 1, restored: false }
 }
+
+/** The plain average prepared like a frame. */
+export function shownAverage(average: StackImage, plan: PreparePlan): StackImage {
+  const planes = outPlanes(plan)
+  const samples = new Float32Array(average.width * average.height * planes)
+  const stored = average.samples as Float32Array<ArrayBuffer>
+  if (planes === 3) prepareColour(stored, 0, plan, samples)
+  else prepareLuminance(stored, 0, plan, samples)
+  return { ...average, planes, samples }
+}

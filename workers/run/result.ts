@@ -19,7 +19,7 @@ export async function runResult(engine: Engine, recipe: Recipe, recipeHash: stri
     chosen: { blurPx: score.blurPx, windowPx: score.windowPx, centre: score.centre },
     keep: { fraction: recipe.keep.fraction, count },
     ranked: stacker.ranked, setAside: countSetAside(refined.shifts.setAside),
-    figures: figurer.of(image), proofs, average: figurer.ofAverage(engine.average(), graded.table.count),
+    figures: figurer.of(image), proofs, average: figurer.ofAverage(engine.averageShown(), graded.table.count),
     ladder: { counts, width, height, planes },
     stretch: displayRange(image), provenance: engine.provenance(),
   }

@@ -18,17 +18,3 @@ export function displayRange({ samples }: StackImage): DisplayStretch {
   const white = some[Math.floor(0.9998 * (some.length - 1))]!
   return { black, white: white > black ? white : black + 1, gamma: 1 }
 }
-
-/** 8-bit view of a stack: interleaved grey or R, G, B. The same formula as the canvas: ((v - black) / (white - black))^(1/gamma). */
-export function view8({ samples, width, height, planes }: StackImage, { black, white, gamma }: DisplayStretch): Uint8Array<ArrayBuffer> {
-  const size = width * height
-  const out = new Uint8Array(size * planes)
-  const range = white - black || 1
-  for (let plane = 0; plane < planes; plane++) {
-    for (let i = 0; i < size; i++) {
-      const level = Math.min(1, Math.max(0, (samples[plane * size + i]! - black) / range))
-      out[i * planes + plane] = Math.round(255 * (gamma === 1 ? level : level ** (1 / gamma)))
-    }
-  }
-  return out
-}
