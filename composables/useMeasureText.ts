@@ -1,10 +1,12 @@
 /** A length in pixels as it is shown: in seconds of arc where the scale is known, with as many decimals as its uncertainty bears. */
 export interface MeasureText { value: string, error: string | null }
 
-/** Decimals that show an uncertainty with two figures at most, 0-4; 3 for arcseconds and 2 for pixels where none is known. */
+/** Decimals that show an uncertainty with one figure, two where it begins with 1; 0-4. The fallback where none is known. */
 function decimalsFor(error: number | null, fallback: number): number {
   if (error === null || !(error > 0)) return fallback
-  return Math.max(0, Math.min(4, 1 - Math.floor(Math.log10(error))))
+  const order = Math.floor(Math.log10(error))
+  const leading = error / 10 ** order
+  return Math.max(0, Math.min(4, (leading < 1.95 ? 1 : 0) - order))
 }
 
 export function measureText(px: number | null, errorPx: number | null, scaleArcsecPerPx: number | null): MeasureText | null {
@@ -24,4 +26,13 @@ export function figureText(value: number | null): string {
   if (size === 0) return '0'
   if (size < 0.001) return value.toExponential(2).replace('e-', ' × 10⁻').replace(/⁻(\d+)/, (_, digits: string) => `⁻${[...digits].map(digit => '⁰¹²³⁴⁵⁶⁷⁸⁹'[Number(digit)]).join('')}`)
   return value.toPrecision(4)
+}
+
+/** Figures of one column with the same number of decimals, so that they align: three figures for the middle one. */
+export function columnText(values: readonly (number | null)[]): string[] {
+  const sizes = values.filter((value): value is number => value !== null && Number.isFinite(value) && value !== 0).map(Math.abs).sort((a, b) => a - b)
+  const middle = sizes[Math.floor(sizes.length / 2)] ?? 1
+  const decimals = Math.max(0, Math.min(8, 2 - Math.floor(Math.log10(middle))))
+  const format = new Intl.NumberFormat('en-GB', { minimumFractionDigits: decimals, maximumFractionDigits: decimals })
+  return values.map(value => (value === null || !Number.isFinite(value) ? '–' : format.format(value)))
 }
