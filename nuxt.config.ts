@@ -3,6 +3,8 @@
  * answers in development, or module workers are blocked there without a word.
  */
 const isolation = {
+  'X-Content-Type-Options': 'nosniff',
+  'Referrer-Policy': 'same-origin',
   'Cross-Origin-Opener-Policy': 'same-origin',
   'Cross-Origin-Embedder-Policy': 'require-corp',
   'Cross-Origin-Resource-Policy': 'same-origin',
@@ -25,7 +27,7 @@ export default defineNuxtConfig({
     '@fontsource-variable/atkinson-hyperlegible-mono/index.css',
   ],
   runtimeConfig: {
-    session: { name: 'lull-session', password: '', maxAge: 60 * 60 * 24 * 14, cookie: { sameSite: 'lax', secure: false } },
+    session: { name: 'lull-session', password: '', maxAge: 60 * 60 * 24 * 14, sessionHeader: false, cookie: { sameSite: 'lax', secure: false } },
     databaseUrl: '',
     dataDir: '.data',
     smtpUrl: '',

@@ -1,0 +1,18 @@
+/**
+ * The list of migrations, in order. Static, so that the built server carries them and scripts use the same;
+ * see DEVELOPERS.md, "A new table".
+ */
+import type { Knex } from 'knex'
+import * as club from './0001_club'
+
+export interface Migration { up(knex: Knex): Promise<void>, down(knex: Knex): Promise<void> }
+
+const migrations: { name: string, migration: Migration }[] = [
+  { name: '0001_club', migration: club },
+]
+
+export const migrationSource: Knex.MigrationSource<typeof migrations[number]> = {
+  getMigrations: () => Promise.resolve(migrations),
+  getMigrationName: ({ name }) => name,
+  getMigration: ({ migration }) => Promise.resolve(migration),
+}

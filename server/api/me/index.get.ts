@@ -1,0 +1,4 @@
+import { defineRoute } from '../../utils/route'
+import { meOf } from '../../utils/session'
+
+export default defineRoute({ access: 'signed-in' }, ({ actor }) => meOf(actor))
