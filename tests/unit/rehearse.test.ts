@@ -136,6 +136,41 @@ describe('a rehearsal', () => {
     expect(-2.5 * Math.log10(second.sum / first.sum)).toBeCloseTo(1, 1)
   })
 
+  it('tells the truth about the brightest speckle, also where the detector undersamples', () => {
+    for (const pixelSizeUm of [2.9, 7, 10]) {
+      const spec: RehearsalSpec = {
+        ...small, width: 64, height: 64, frames: 6, subSteps: 1, dropShare: 0, air: { ...small.air, apertureOverR0: 2 }, optics: { ...small.optics, pixelSizeUm },
+        scene: { kind: 'stars', fluxElectrons: 1e6, stars: [{ separationArcsec: 0, positionAngleDeg: 0, deltaMag: 0 }] },
+        detector: { ...small.detector, hotPixels: 0, gain: 0.5, bias: 100 },
+      }
+      const simulator = createSimulator(spec)
+      const frame = new Uint16Array(64 * 64)
+      for (let i = 0; i < 6; i++) {
+        const truth = simulator.render(i, frame, 0)
+        const best = frame.indexOf(frame.reduce((a, b) => Math.max(a, b), 0))
+        expect(Math.abs(best % 64 - truth.placeX - truth.psfPeakX)).toBeLessThan(1)
+        expect(Math.abs(Math.floor(best / 64) - truth.placeY - truth.psfPeakY)).toBeLessThan(1)
+        expect(truth.strehl).toBeGreaterThan(0.02)
+        expect(truth.strehl).toBeLessThan(1)
+      }
+    }
+  })
+
+  it('gives the planet its colours through a mosaic and keeps the sky dark', () => {
+    const spec: RehearsalSpec = { ...demoScenes.planet, frames: 1, motion: { ...small.motion, startX: 0, startY: 0 }, detector: { ...demoScenes.planet.detector, hotPixels: 0 } }
+    const frame = new Uint8Array(160 * 160)
+    createSimulator(spec).render(0, frame, 0)
+    const mean = (x: number, y: number) => {
+      let sum = 0
+      for (let j = 0; j < 20; j += 2) for (let i = 0; i < 20; i += 2) sum += frame[(70 + j + y) * 160 + 70 + i + x]!
+      return sum / 100
+    }
+    // The clouds are cream: red over green over blue (RGGB).
+    expect(mean(0, 0)).toBeGreaterThan(mean(1, 0))
+    expect(mean(0, 1)).toBeGreaterThan(mean(1, 1))
+    expect(frame[3 * 160 + 3]).toBeLessThan(20)
+  })
+
   it('is the same for any order and block size', async () => {
     const whole = await (await rehearsalReader(small)).readFrames(0, 9)
     const reader = await rehearsalReader(small)
