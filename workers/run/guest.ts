@@ -10,6 +10,8 @@ import type { ByteSource } from '../source/types'
 import type { StackFigures } from '../../shared/schemas/run'
 import { columnsFromCsv } from './frames-table'
 
+const notTheLadder = 'The ladder of this run cannot be read: its file is not the expected one.'
+
 /** Rungs kept in memory; a guest drags back and forth over the same few. */
 const KEPT = 24
 
@@ -27,6 +29,8 @@ export class GuestRun implements GuestApi {
       layoutOf(this.#source),
       fetch(run.framesUrl, { credentials: 'same-origin' }).then(answer => answer.ok ? answer.text() : Promise.reject(new Error(`The frame table could not be read (${answer.status}). Load the page again.`))),
     ])
+    const { ladder } = run.result
+    if (layout.count !== ladder.counts.length || layout.width !== ladder.width || layout.height !== ladder.height || layout.planes !== ladder.planes) throw new Error(notTheLadder)
     this.#layout = layout
     return { counts: run.result.ladder.counts.slice(), columns: columnsFromCsv(table) }
   }
@@ -102,7 +106,7 @@ async function layoutOf(source: ByteSource): Promise<CubeLayout> {
     if (layout) return layout
     if (bytes >= source.size) break
   }
-  throw new Error('The ladder of this run cannot be read: its file is not the expected one.')
+  throw new Error(notTheLadder)
 }
 
 /** Index of the count nearest to the wanted one, the smaller on a tie. */

@@ -6,6 +6,8 @@ export interface Pool {
   readonly size: number
   /** True where buffers can be shared between threads; then batches are not copied. */
   readonly shared: boolean
+  /** True once a worker has failed: every further call is refused, and a new pool is needed. */
+  readonly failed: boolean
   call<T extends ComputeRequest>(worker: number, request: T, transfer?: ArrayBuffer[]): Promise<ComputeReply<T>>
   /** Ends all workers; calls in flight are rejected. */
   end(): void
@@ -15,6 +17,7 @@ export interface Pool {
 export class InlinePool implements Pool {
   readonly size = 1
   readonly shared = true
+  readonly failed = false
   readonly #computer = new Computer()
 
   async call<T extends ComputeRequest>(_worker: number, request: T): Promise<ComputeReply<T>> {
@@ -67,6 +70,8 @@ export class PortPool implements Pool {
       port.onFailure(reason => this.#fail(reason))
     })
   }
+
+  get failed(): boolean { return this.#failure !== null }
 
   call<T extends ComputeRequest>(worker: number, request: T, transfer: ArrayBuffer[] = []): Promise<ComputeReply<T>> {
     if (this.#failure) return Promise.reject(this.#failure)

@@ -26,6 +26,10 @@ export class Session implements CoreApi {
     await this.close()
     try {
       const reader = await openInput(input, overrides)
+      if (this.#pool?.failed) {
+        this.#pool.end()
+        this.#pool = null
+      }
       this.#pool ??= this.#options.makePool()
       this.#engine = new Engine(reader, { pool: this.#pool, store: this.#options.store, budgetBytes: this.#options.budgetBytes })
       return { ok: true, facts: reader.facts, resumable: await this.#engine.resumable() }
