@@ -1,10 +1,8 @@
 /**
- * Formulas of the air and of the telescope's limit. Units are in the names; all functions are pure and throw a
- * RangeError for values that have no meaning. Sources stand beside each; "from memory" where the page was not read.
+ * Formulas of the air (those of the telescope are in optics.ts). Units are in the names; all functions are pure and throw
+ * a RangeError for values that have no meaning. Sources stand beside each; "from memory" where the page was not read.
  */
-
-/** Arcseconds in a radian. */
-export const ARCSEC_PER_RADIAN = 206264.806247
+import { ARCSEC_PER_RADIAN } from './optics'
 
 function positive(name: string, value: number): number {
   if (!(value > 0) || !Number.isFinite(value)) throw new RangeError(`${name} must be a positive number, not ${value}.`)
@@ -62,25 +60,4 @@ export function isoplanaticAngleArcsec(r0Mm: number, heightM: number): number {
 export function imageMotionArcsec(r0Mm: number, apertureMm: number, wavelengthNm: number): number {
   const metres = positive('The wavelength', wavelengthNm) * 1e-9
   return ARCSEC_PER_RADIAN * Math.sqrt(0.182 * metres ** 2 * (positive('r0', r0Mm) * 1e-3) ** (-5 / 3) * (positive('The aperture', apertureMm) * 1e-3) ** (-1 / 3))
-}
-
-/** Strehl ratio of a phase of `sigmaRad` rms: exp(−σ²) (Born & Wolf, section 9.3, from memory). */
-export function strehlOfPhase(sigmaRad: number): number {
-  return Math.exp(-(sigmaRad ** 2))
-}
-
-/** Diffraction limits of an unobstructed circle, arcsec: λ/D and its multiples; Dawes is 116″ over the aperture in mm (Dawes 1867, from memory). */
-export function diffractionLimits(apertureMm: number, wavelengthNm: number): { lambdaOverD: number, rayleigh: number, airyFwhm: number, sparrow: number, dawes: number } {
-  const lambdaOverD = ARCSEC_PER_RADIAN * positive('The wavelength', wavelengthNm) * 1e-6 / positive('The aperture', apertureMm)
-  return { lambdaOverD, rayleigh: 1.21967 * lambdaOverD, airyFwhm: 1.02899 * lambdaOverD, sparrow: 0.94715 * lambdaOverD, dawes: 116 / apertureMm }
-}
-
-/** Arcseconds on one pixel. */
-export function plateScaleArcsec(pixelSizeUm: number, focalLengthMm: number): number {
-  return ARCSEC_PER_RADIAN * positive('The pixel size', pixelSizeUm) * 1e-3 / positive('The focal length', focalLengthMm)
-}
-
-/** Smallest focal ratio that samples the diffraction limit: 2 p/λ. The red and blue sites of a mosaic have twice the pitch. */
-export function nyquistFocalRatio(pixelSizeUm: number, wavelengthNm: number): number {
-  return 2000 * positive('The pixel size', pixelSizeUm) / positive('The wavelength', wavelengthNm)
 }

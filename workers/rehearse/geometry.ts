@@ -1,4 +1,5 @@
 /** Grid sizes of a rehearsal, chosen from the optics, the air and the frame. */
+import { lambdaOverDArcsec } from '../../shared/optics'
 import { pixelScaleArcsec, type RehearsalSpec } from './spec'
 
 export interface Geometry {
@@ -27,7 +28,7 @@ const powerOfTwo = (value: number) => 2 ** Math.ceil(Math.log2(value))
 
 export function rehearsalGeometry(spec: RehearsalSpec): Geometry {
   const scale = pixelScaleArcsec(spec.optics)
-  const lambdaOverD = 206264.806 * spec.optics.wavelengthNm * 1e-9 / (spec.optics.apertureMm * 1e-3)
+  const lambdaOverD = lambdaOverDArcsec(spec.optics.apertureMm, spec.optics.wavelengthNm)
   // Blue light through a mosaic has the finest detail; it must still be sampled at two pixels for λ/D.
   const finest = lambdaOverD * (spec.detector.mosaic === 'none' ? 1 : Math.min(1, 450 / spec.optics.wavelengthNm))
   const oversample = Math.min(8, Math.max(1, Math.ceil(2.02 * scale / finest)))

@@ -8,6 +8,7 @@
  * Not modelled: differences of the air across the field, scintillation, dispersion.
  */
 import { z } from 'zod'
+import { plateScale } from '../../shared/optics'
 import { mosaicPatterns } from '../../shared/schemas/capture'
 
 const finite = z.number().refine(Number.isFinite)
@@ -116,7 +117,7 @@ export interface FrameTruth {
   transparency: number
 }
 
-/** Arcseconds on one pixel: 206.264806 × pixel size (µm) / focal length (mm). */
+/** Arcseconds on one pixel. */
 export function pixelScaleArcsec(optics: RehearsalSpec['optics']): number {
-  return 206.264806 * optics.pixelSizeUm / optics.focalLengthMm
+  return plateScale(optics.pixelSizeUm, optics.focalLengthMm)
 }
