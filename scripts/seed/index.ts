@@ -4,7 +4,7 @@
  *
  *   LULL_BASE_URL=http://127.0.0.1:3000 DATABASE_URL=mysql://… tsx scripts/seed/index.ts
  */
-import { belongsToOthers, ensurePeople, isSeeded, markSeeded, openDatabase } from './people'
+import { hasDemoClub, isSeeded, markSeeded, openDatabase } from './marker'
 import { seed } from './seed'
 
 async function main(): Promise<void> {
@@ -14,11 +14,10 @@ async function main(): Promise<void> {
   const db = openDatabase(database)
   try {
     if (await isSeeded(db)) return
-    if (await belongsToOthers(db)) {
-      console.log('This database belongs to a club already; the demo is left out.')
+    if (!await hasDemoClub(db)) {
+      console.log('This database belongs to a club of its own; the demo is left out.')
       return
     }
-    await ensurePeople(db)
     await seed(base)
     await markSeeded(db)
   }

@@ -19,14 +19,14 @@ export const reviewPlans: Record<string, ReviewPlan> = {
   'first-double': {
     ask: 'Is the companion clean enough for a measure?',
     pins: [{ place: 1, dx: 0, dy: 0, text: 'Round, and clear of the first ring. I would measure this.' }],
-    remarks: [{ by: 'maren', pin: 0, text: 'Thank you. I will add a drift on the next night for the scale.' }],
+    remarks: [{ by: 'ines', pin: 0, text: 'Thank you. I will add a drift on the next night for the scale.' }],
     proposal: null,
     verdict: { verdict: 'accepted', text: 'A tenth of the frames is right here: fewer only add noise.' },
   },
   'first-planet': {
     ask: 'My first colour capture. What should I change?',
     pins: [{ place: 0, dx: 14, dy: -25, text: 'The oval is there, but washed out: half of the frames is too many for this air.' }],
-    remarks: [{ by: 'maren', pin: 0, text: 'I kept more because the single frames look so noisy.' }, { by: 'tobias', pin: 0, text: 'A fifth still has some fifty frames. Try it, and restore the two finest scales with care.' }],
+    remarks: [{ by: 'ines', pin: 0, text: 'I kept more because the single frames look so noisy.' }, { by: 'matthis', pin: 0, text: 'A fifth still has some fifty frames. Try it, and restore the two finest scales with care.' }],
     proposal: { text: 'A fifth of the frames, two scales restored.', change: recipe => ({ ...recipe, keep: { fraction: 0.2 }, restore: { scales: 2, gain: 1.8, thresholdSigma: 3 } }) },
     verdict: { verdict: 'another-pass', text: 'Good capture. One more pass with fewer frames, please.' },
   },
@@ -36,7 +36,7 @@ export const reviewPlans: Record<string, ReviewPlan> = {
       { place: 2, dx: 0, dy: 0, text: 'Here, between the two rings. At 30 % it is half drowned in the halo.' },
       { place: 0, dx: 7, dy: -7, text: 'The ring of A is even all round: focus and collimation are fine.' },
     ],
-    remarks: [{ by: 'jun', pin: 0, text: 'So it is real? I feared that it was a speckle that came back.' }],
+    remarks: [{ by: 'jorin', pin: 0, text: 'So it is real? I feared that it was a speckle that came back.' }],
     proposal: { text: 'Keep a tenth. The third star stands out, and a hundred frames still suffice.', change: recipe => ({ ...recipe, keep: { fraction: 0.1 } }) },
     verdict: null,
   },
@@ -44,7 +44,7 @@ export const reviewPlans: Record<string, ReviewPlan> = {
 
 /** Does whatever of the plan the run does not have yet. `places`: on the stack, px. */
 export async function ensureReview(members: Members, owner: Member, runId: string, plan: ReviewPlan, places: () => Promise<{ x: number, y: number }[]>): Promise<void> {
-  const mentor = members.tobias
+  const mentor = members.matthis
   const path = `/api/runs/${runId}`
   const before = await owner.call<RunDetail>('GET', path)
   if (before.reviews.some(review => review.verdict !== null)) return

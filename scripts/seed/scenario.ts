@@ -1,24 +1,16 @@
 /**
  * The demo: an invented club with invented members, instruments, targets and captures. No person, place, make or star
- * in it is real. Nights count back from the day the club joined.
+ * in it is real. Nights count back from the day the club began.
  */
 import type { z } from 'zod'
 import type { InstrumentBody, targetBody } from '../../shared/api/archive'
-import type { Role } from '../../shared/api/account'
+import { demoPeople } from '../../shared/demo'
 import { defaultRecipe, type Recipe } from '../../shared/schemas/recipe'
 import { demoScenes, type RehearsalSpec } from '../../workers/rehearse/index'
 
-export type Person = 'orla' | 'tobias' | 'maren' | 'jun'
-
-export const clubName = 'Marram Point Observers'
-
-/** Addresses end in .example, which RFC 2606 keeps free for ever. The passwords are printed at start: the demo has no secrets. */
-export const people: Record<Person, { name: string, email: string, role: Role, password: string }> = {
-  orla: { name: 'Orla Fennimere', email: 'orla@marram.example', role: 'organiser', password: 'keep-the-lamp-low' },
-  tobias: { name: 'Tobias Wrenholt', email: 'tobias@marram.example', role: 'mentor', password: 'quiet-air-after-one' },
-  maren: { name: 'Maren Askvold', email: 'maren@marram.example', role: 'member', password: 'dunes-and-dark-sky' },
-  jun: { name: 'Jun Harrowby', email: 'jun@marram.example', role: 'member', password: 'three-stars-in-larch' },
-}
+/** The members, by their first names; their sign-ins stand in shared/demo.ts and are made by the server at its first start. */
+export const people = { orla: demoPeople[0], matthis: demoPeople[1], ines: demoPeople[2], jorin: demoPeople[3] }
+export type Person = keyof typeof people
 
 const dune = demoScenes.double.optics
 const harbour = demoScenes.triple.optics
@@ -30,9 +22,9 @@ function instrument(name: string, optics: RehearsalSpec['optics'], filter: strin
 }
 
 export const instruments = {
-  dune: { owner: 'maren', body: instrument('Dune hut 250 mm, f/22', dune, 'green, 550 nm') },
-  harbour: { owner: 'jun', body: instrument('Harbour 350 mm, f/15.4', harbour, 'green, 550 nm') },
-  orchard: { owner: 'maren', body: instrument('Orchard 280 mm, f/15', orchard, 'colour mosaic') },
+  dune: { owner: 'ines', body: instrument('Dune hut 250 mm, f/22', dune, 'green, 550 nm') },
+  harbour: { owner: 'jorin', body: instrument('Harbour 350 mm, f/15.4', harbour, 'green, 550 nm') },
+  orchard: { owner: 'ines', body: instrument('Orchard 280 mm, f/15', orchard, 'colour mosaic') },
 } satisfies Record<string, { owner: Person, body: InstrumentBody }>
 
 export type InstrumentKey = keyof typeof instruments
@@ -52,7 +44,7 @@ const planets: Recipe = {
 /** Versions in order, each with what changed. A fork starts from the latest version of its origin. */
 export const recipes = {
   pairs: {
-    owner: 'tobias', name: 'Close pairs', shared: true, forkOf: null,
+    owner: 'matthis', name: 'Close pairs', shared: true, forkOf: null,
     description: 'For double stars from one to four arcseconds in ordinary air. Ranks by the peak: on a star it follows the Strehl ratio best.',
     versions: [
       { recipe: { ...pairs, keep: { fraction: 0.2 } }, note: '' },
@@ -60,14 +52,14 @@ export const recipes = {
     ],
   },
   triples: {
-    owner: 'jun', name: 'Close triples, wide halo', shared: true, forkOf: 'pairs',
+    owner: 'jorin', name: 'Close triples, wide halo', shared: true, forkOf: 'pairs',
     description: 'From Close pairs, for a faint third star in the halo of two bright ones.',
     versions: [
       { recipe: { ...pairs, register: { ...pairs.register, referenceFraction: 0.02 }, keep: { fraction: 0.3 } }, note: 'A sharper reference; keeps more, because the third star is faint.' },
     ],
   },
   planets: {
-    owner: 'maren', name: 'Banded planets, gently', shared: true, forkOf: null,
+    owner: 'ines', name: 'Banded planets, gently', shared: true, forkOf: null,
     description: 'For a planet through a colour mosaic. Ranks by fine detail after a wide blur, so that grain does not choose the frames.',
     versions: [
       { recipe: planets, note: '' },
@@ -88,11 +80,11 @@ function air(spec: RehearsalSpec, apertureOverR0: number): RehearsalSpec['air'] 
 
 /** Sizes are chosen so that everything is simulated and worked through in well under a minute. */
 export const captures = {
-  double1: { spec: { ...demoScenes.double, seed: 3101, frames: 900 }, file: 'tern-double-1.ser', observer: 'maren', nightsAgo: 16, startUtc: '20:41:07', instrument: 'dune' },
-  triple1: { spec: { ...demoScenes.triple, seed: 3202, frames: 1000 }, file: 'larch-triple-1.ser', observer: 'jun', nightsAgo: 9, startUtc: '22:41:30', instrument: 'harbour' },
-  planet1: { spec: { ...demoScenes.planet, seed: 3303, frames: 240 }, file: 'saffron-planet-1.ser', observer: 'maren', nightsAgo: 7, startUtc: '23:12:44', instrument: 'orchard' },
-  terrain1: { spec: { ...demoScenes.terrain, seed: 3404, frames: 200 }, file: 'quarry-patch-1.ser', observer: 'jun', nightsAgo: 4, startUtc: '19:05:12', instrument: 'orchard' },
-  double2: { spec: { ...demoScenes.double, seed: 3505, frames: 600, air: air(demoScenes.double, 5.6) }, file: 'tern-double-2.ser', observer: 'tobias', nightsAgo: 2, startUtc: '21:20:03', instrument: 'dune' },
+  double1: { spec: { ...demoScenes.double, seed: 3101, frames: 900 }, file: 'tern-double-1.ser', observer: 'ines', nightsAgo: 16, startUtc: '20:41:07', instrument: 'dune' },
+  triple1: { spec: { ...demoScenes.triple, seed: 3202, frames: 1000 }, file: 'larch-triple-1.ser', observer: 'jorin', nightsAgo: 9, startUtc: '22:41:30', instrument: 'harbour' },
+  planet1: { spec: { ...demoScenes.planet, seed: 3303, frames: 240 }, file: 'saffron-planet-1.ser', observer: 'ines', nightsAgo: 7, startUtc: '23:12:44', instrument: 'orchard' },
+  terrain1: { spec: { ...demoScenes.terrain, seed: 3404, frames: 200 }, file: 'quarry-patch-1.ser', observer: 'jorin', nightsAgo: 4, startUtc: '19:05:12', instrument: 'orchard' },
+  double2: { spec: { ...demoScenes.double, seed: 3505, frames: 600, air: air(demoScenes.double, 5.6) }, file: 'tern-double-2.ser', observer: 'matthis', nightsAgo: 2, startUtc: '21:20:03', instrument: 'dune' },
 } satisfies Record<string, Capture>
 
 export type CaptureKey = keyof typeof captures
@@ -106,18 +98,18 @@ export interface RunPlan {
 
 /** In the order of filing. */
 export const runs: RunPlan[] = [
-  { key: 'first-double', owner: 'maren', target: 'Tern double', capture: 'double1', recipe: 'pairs', version: 2, replaces: null, fileRaw: false,
-    note: 'Steady for the first half, then gusts off the sea. Tobias’s recipe as it is.' },
-  { key: 'first-triple', owner: 'jun', target: 'Larch triple', capture: 'triple1', recipe: 'triples', version: 1, replaces: null, fileRaw: false,
+  { key: 'first-double', owner: 'ines', target: 'Tern double', capture: 'double1', recipe: 'pairs', version: 2, replaces: null, fileRaw: false,
+    note: 'Steady for the first half, then gusts off the sea. Matthis’s recipe as it is.' },
+  { key: 'first-triple', owner: 'jorin', target: 'Larch triple', capture: 'triple1', recipe: 'triples', version: 1, replaces: null, fileRaw: false,
     note: 'A thin cloud went through at about sixteen seconds, and I nudged the mount once.' },
-  { key: 'first-planet', owner: 'maren', target: 'Saffron planet', capture: 'planet1', recipe: 'planets', version: 1, replaces: null, fileRaw: false,
+  { key: 'first-planet', owner: 'ines', target: 'Saffron planet', capture: 'planet1', recipe: 'planets', version: 1, replaces: null, fileRaw: false,
     note: 'First light of the colour camera. Half of the frames, nothing restored.' },
-  { key: 'patch', owner: 'jun', target: 'Quarry patch', capture: 'terrain1', recipe: 'planets', version: 1, replaces: null, fileRaw: false,
-    note: 'Low sun on the walls. Maren’s planet recipe works here as well.' },
-  { key: 'second-planet', owner: 'maren', target: 'Saffron planet', capture: 'planet1', recipe: 'planets', version: 2, replaces: 'first-planet', fileRaw: true,
-    note: 'The same capture again with fewer frames and two scales restored, as Tobias asked. The raw capture is filed with it.' },
-  { key: 'second-double', owner: 'tobias', target: 'Tern double', capture: 'double2', recipe: 'pairs', version: 2, replaces: null, fileRaw: false,
-    note: 'Poorer air than Maren had; for comparison.' },
-  { key: 'third-double', owner: 'jun', target: 'Tern double', capture: 'double2', recipe: 'pairs', version: 1, replaces: null, fileRaw: false,
-    note: 'Tobias’s capture with the older version of the recipe, to see what the keep fraction does.' },
+  { key: 'patch', owner: 'jorin', target: 'Quarry patch', capture: 'terrain1', recipe: 'planets', version: 1, replaces: null, fileRaw: false,
+    note: 'Low sun on the walls. Ines’s planet recipe works here as well.' },
+  { key: 'second-planet', owner: 'ines', target: 'Saffron planet', capture: 'planet1', recipe: 'planets', version: 2, replaces: 'first-planet', fileRaw: true,
+    note: 'The same capture again with fewer frames and two scales restored, as Matthis asked. The raw capture is filed with it.' },
+  { key: 'second-double', owner: 'matthis', target: 'Tern double', capture: 'double2', recipe: 'pairs', version: 2, replaces: null, fileRaw: false,
+    note: 'Poorer air than Ines had; for comparison.' },
+  { key: 'third-double', owner: 'jorin', target: 'Tern double', capture: 'double2', recipe: 'pairs', version: 1, replaces: null, fileRaw: false,
+    note: 'Matthis’s capture with the older version of the recipe, to see what the keep fraction does.' },
 ]

@@ -69,7 +69,7 @@ export async function seed(base: string, { share = 1 }: SeedOptions = {}): Promi
 
 /** The day the demo began: when its organiser joined. */
 function anchorOf(club: Club): string {
-  return club.members.find(({ name }) => name === people.orla.name)!.joinedAt
+  return club.members.find(({ name }) => name === people.orla.name)?.joinedAt ?? new Date().toISOString()
 }
 
 /** Closes captures that no later run needs. */
