@@ -1,4 +1,5 @@
 import { describe, expect, it } from 'vitest'
+import { makeKernels } from '../../workers/kernels/index'
 import { AverageSum, averageOf } from '../../workers/run/average'
 import { pack, unpack } from '../../workers/run/pack'
 import { ProgressMeter } from '../../workers/run/progress'
@@ -21,14 +22,14 @@ describe('ranking', () => {
 describe('the plain average', () => {
   it('is the exact mean of integers, beyond what 32 bits hold', () => {
     const frame = Uint16Array.of(65535, 1, 40000, 0)
-    const sum = new AverageSum(4, frame)
+    const sum = new AverageSum(4, frame, 1, makeKernels(1024, 4, 4))
     for (let k = 0; k < 70_000; k++) sum.add(frame, 0, 1)
     expect([...averageOf(sum.take(), 70_000, 1)]).toEqual([65535, 1, 40000, 0])
   })
   it('does not depend on the order of float frames', () => {
     const frames = Float32Array.from({ length: 300 }, (_, i) => Math.sin(i * 12.9898) * 43758.5453)
-    const forward = new AverageSum(3, frames, 1024)
-    const backward = new AverageSum(3, frames, 1024)
+    const forward = new AverageSum(3, frames, 1024, makeKernels(1024, 3, 3))
+    const backward = new AverageSum(3, frames, 1024, makeKernels(1024, 3, 3))
     for (let k = 0; k < 100; k++) forward.add(frames, k * 3, 1)
     for (let k = 99; k >= 0; k--) backward.add(frames, k * 3, 1)
     const a = forward.take()

@@ -17,15 +17,23 @@ function working(length: number): Float32Array {
   return scratch
 }
 
-/** Copies one frame, repairs hot and dead pixels and counts the clipped samples (hot ones left out). */
-function load(samples: Samples, offset: number, length: number, plan: PreparePlan, out: Float32Array): number {
-  const limit = plan.saturation ?? Infinity
+/** Copies stored samples to floats and says how many are at or over a limit; workers/kernels has a vector form. */
+export type Convert = (samples: Samples, offset: number, length: number, limit: number, out: Float32Array) => number
+
+export const plainConvert: Convert = (samples, offset, length, limit, out) => {
   let clipped = 0
   for (let i = 0; i < length; i++) {
     const value = samples[offset + i]!
     out[i] = value
     if (value >= limit) clipped++
   }
+  return clipped
+}
+
+/** Copies one frame, repairs hot and dead pixels and counts the clipped samples (hot ones left out). */
+function load(samples: Samples, offset: number, length: number, plan: PreparePlan, out: Float32Array, convert: Convert): number {
+  const limit = plan.saturation ?? Infinity
+  let clipped = convert(samples, offset, length, limit, out)
   const { hotPixels, repairFrom } = plan
   for (let h = 0; h < hotPixels.length; h++) {
     const i = hotPixels[h]!
@@ -48,35 +56,35 @@ function load(samples: Samples, offset: number, length: number, plan: PreparePla
  * @param offset index of the frame's first sample
  * @returns how many samples of the frame are clipped
  */
-export function prepareLuminance(samples: Samples, offset: number, plan: PreparePlan, out: Float32Array): number {
+export function prepareLuminance(samples: Samples, offset: number, plan: PreparePlan, out: Float32Array, convert: Convert = plainConvert): number {
   const { width, height } = plan
   const size = width * height
   if (plan.planes === 3) {
     const planes = working(3 * size)
-    const clipped = load(samples, offset, 3 * size, plan, planes)
+    const clipped = load(samples, offset, 3 * size, plan, planes, convert)
     for (let i = 0; i < size; i++) out[i] = 0.25 * (planes[i]! + 2 * planes[size + i]! + planes[2 * size + i]!)
     return clipped
   }
-  if (plan.mosaic === 'none') return load(samples, offset, size, plan, out)
+  if (plan.mosaic === 'none') return load(samples, offset, size, plan, out, convert)
   const raw = working(size)
-  const clipped = load(samples, offset, size, plan, raw)
+  const clipped = load(samples, offset, size, plan, raw, convert)
   binomial(raw, width, height, out)
   return clipped
 }
 
 /** Planes for stacking, outPlanes(plan) × height × width, in sample units; mosaics by Malvar-He-Cutler. */
-export function prepareColour(samples: Samples, offset: number, plan: PreparePlan, out: Float32Array): void {
+export function prepareColour(samples: Samples, offset: number, plan: PreparePlan, out: Float32Array, convert: Convert = plainConvert): void {
   const size = plan.width * plan.height
   if (plan.planes === 3) {
-    load(samples, offset, 3 * size, plan, out)
+    load(samples, offset, 3 * size, plan, out, convert)
     return
   }
   if (plan.mosaic === 'none') {
-    load(samples, offset, size, plan, out)
+    load(samples, offset, size, plan, out, convert)
     return
   }
   const raw = working(size)
-  load(samples, offset, size, plan, raw)
+  load(samples, offset, size, plan, raw, convert)
   demosaic(raw, plan.width, plan.height, plan.mosaic, out)
 }
 

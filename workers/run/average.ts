@@ -1,5 +1,6 @@
 import type { StackImage } from '../api'
 import type { Samples } from '../decode/types'
+import type { Kernels } from '../kernels/index'
 import type { CaptureFacts } from '../../shared/schemas/capture'
 
 /**
@@ -10,18 +11,23 @@ import type { CaptureFacts } from '../../shared/schemas/capture'
 export class AverageSum {
   readonly #size: number
   readonly #integers: boolean
-  readonly #small: Uint32Array
-  readonly #large: Float64Array
+  readonly #kernels: Kernels
+  readonly #small: Int32Array
+  #large: Float64Array
   readonly #room: number
   readonly #scale: number
   #pending = 0
 
-  /** @param scale multiplier of float samples; unused for integers */
-  constructor(size: number, like: Samples, scale = 1) {
+  /**
+   * @param scale multiplier of float samples; unused for integers
+   * @param kernels with room for the 32-bit sum and one frame
+   */
+  constructor(size: number, like: Samples, scale: number, kernels: Kernels) {
+    this.#kernels = kernels
     this.#scale = scale
     this.#size = size
     this.#integers = !(like instanceof Float32Array)
-    this.#small = new Uint32Array(this.#integers ? size : 0)
+    this.#small = kernels.ints(this.#integers ? size : 0)
     this.#large = new Float64Array(size)
     this.#room = like instanceof Uint8Array ? 2 ** 24 : 2 ** 16
   }
@@ -35,8 +41,7 @@ export class AverageSum {
   }
 
   #addIntegers(samples: Samples, at: number): void {
-    const small = this.#small
-    for (let k = 0; k < small.length; k++) small[k]! += samples[at + k]!
+    this.#kernels.addSamples(samples, at, this.#size, this.#small)
     if (++this.#pending >= this.#room) this.#empty()
   }
 
@@ -50,15 +55,17 @@ export class AverageSum {
   }
 
   #empty(): void {
-    for (let k = 0; k < this.#small.length; k++) this.#large[k]! += this.#small[k]!
+    for (let k = 0; k < this.#small.length; k++) this.#large[k]! += this.#small[k]! >>> 0
     this.#small.fill(0)
     this.#pending = 0
   }
 
-  /** The sum in fixed point; see `averageOf`. */
+  /** The sum in fixed point, see `averageOf`; what comes after is added from zero. */
   take(): Float64Array {
     this.#empty()
-    return this.#large
+    const sum = this.#large
+    this.#large = new Float64Array(this.#size)
+    return sum
   }
 }
 

@@ -21,7 +21,7 @@ export interface Adder { plan: PreparePlan, planes: 1 | 3, scale: number, kernel
 /** An adder with memory for `sums` 32-bit sums; they are made with its kernels. */
 export function makeAdder(how: Omit<Adder, 'kernels' | 'frame'>, sums: number): Adder {
   const samples = how.plan.width * how.plan.height * how.planes
-  const kernels = makeKernels((sums + 1) * (samples * 4 + 128), how.plan.width)
+  const kernels = makeKernels((sums + 1) * (samples * 4 + 128), how.plan.width, how.plan.width * how.plan.height * how.plan.planes)
   return { ...how, kernels, frame: kernels.floats(samples) }
 }
 
@@ -34,7 +34,8 @@ export class Computer {
   #setup: JudgeSetup | null = null
   #scorer: Scorer | null = null
   #registrar: Registrar | null = null
-  #luminance = new Float32Array(0)
+  #kernels: Kernels | null = null
+  #luminance: Float32Array = new Float32Array(0)
   #score = emptyScore()
   #shift = emptyShift()
   #sums: { adder: Adder, slots: (FixedSum | null)[] } | null = null
@@ -61,7 +62,11 @@ export class Computer {
 
   #begin(setup: JudgeSetup): null {
     this.#setup = setup
-    this.#luminance = new Float32Array(setup.prepare.width * setup.prepare.height)
+    const { width, height, planes } = setup.prepare
+    // One frame's luminance and, while grading, the sum for the plain average.
+    this.#kernels = makeKernels(width * height * (1 + planes) * 4 + 1024, width, width * height * planes)
+    this.#luminance = this.#kernels.floats(width * height)
+    this.#average = null
     this.#scorer = setup.score && createScorer(setup.score)
     this.#registrar = setup.register && createRegistrar(setup.register)
     return null
@@ -78,7 +83,7 @@ export class Computer {
     const stride = plan.width * plan.height * plan.planes
     const score = this.#score
     for (let i = 0; i < n; i++) {
-      const clipped = prepareLuminance(batch.samples, batch.offset + i * stride, plan, this.#luminance)
+      const clipped = prepareLuminance(batch.samples, batch.offset + i * stride, plan, this.#luminance, this.#kernels!.convert)
       this.#scorer!.score(this.#luminance, clipped, score)
       reply.laplacian[i] = score.laplacian
       reply.peak[i] = score.peak
@@ -89,7 +94,7 @@ export class Computer {
       reply.flags[i] = (score.saturated ? SATURATED : 0) | (score.empty ? EMPTY : 0) | (score.outOfField ? OUTSIDE : 0)
       if (reply.shifts) this.#shiftInto(reply.shifts, i, score.x, score.y)
     }
-    this.#average ??= new AverageSum(stride, batch.samples, averageScale)
+    this.#average ??= new AverageSum(stride, batch.samples, averageScale, this.#kernels!)
     this.#average.add(batch.samples, batch.offset, n)
     return reply
   }
@@ -99,7 +104,7 @@ export class Computer {
     const plan = this.#setup!.prepare
     const stride = plan.width * plan.height * plan.planes
     for (let i = 0; i < picks.length; i++) {
-      prepareLuminance(batch.samples, batch.offset + picks[i]! * stride, plan, this.#luminance)
+      prepareLuminance(batch.samples, batch.offset + picks[i]! * stride, plan, this.#luminance, this.#kernels!.convert)
       this.#shiftInto(reply, i, x[i]!, y[i]!)
     }
     return reply
@@ -161,9 +166,7 @@ export class Computer {
   }
 
   #takeAverage(size: number): { sum: Float64Array } {
-    const sum = this.#average?.take() ?? new Float64Array(size)
-    this.#average = null
-    return { sum }
+    return { sum: this.#average?.take() ?? new Float64Array(size) }
   }
 }
 
@@ -171,8 +174,8 @@ export class Computer {
 export function addFrame({ plan, planes, scale, kernel, kernels, frame }: Adder, batch: Batch, pick: number, dx: number, dy: number, sign: 1 | -1, sum: Int32Array): void {
   const size = plan.width * plan.height
   const offset = batch.offset + pick * size * plan.planes
-  if (planes === 1) prepareLuminance(batch.samples, offset, plan, frame)
-  else prepareColour(batch.samples, offset, plan, frame)
+  if (planes === 1) prepareLuminance(batch.samples, offset, plan, frame, kernels.convert)
+  else prepareColour(batch.samples, offset, plan, frame, kernels.convert)
   for (let plane = 0; plane < planes; plane++) {
     kernels.addShifted(frame.subarray(plane * size, (plane + 1) * size), plan.width, plan.height, dx, dy, kernel, scale, sign,
       sum.subarray(plane * size, (plane + 1) * size))

@@ -1,2 +1,2 @@
 export { addShifted } from './add-shifted'
-export { fromU8, fromU16, sumU16 } from './convert'
+export { fromU8, fromU16, sumU8, sumU16 } from './convert'
