@@ -4,11 +4,15 @@
  */
 import type { Knex } from 'knex'
 import * as club from './0001_club'
+import * as archive from './0002_archive'
+import * as review from './0003_review'
 
 export interface Migration { up(knex: Knex): Promise<void>, down(knex: Knex): Promise<void> }
 
 const migrations: { name: string, migration: Migration }[] = [
   { name: '0001_club', migration: club },
+  { name: '0002_archive', migration: archive },
+  { name: '0003_review', migration: review },
 ]
 
 export const migrationSource: Knex.MigrationSource<typeof migrations[number]> = {

@@ -1,0 +1,5 @@
+import { restoreRun } from '../../../utils/archive/change'
+import { idParam } from '../../../utils/params'
+import { defineRoute } from '../../../utils/route'
+
+export default defineRoute({ access: 'club.read' }, ({ event, actor }) => restoreRun(actor, idParam(event, 'id')))

@@ -1,0 +1,4 @@
+import { listTargets } from '../../utils/archive/instruments'
+import { defineRoute } from '../../utils/route'
+
+export default defineRoute({ access: 'club.read' }, ({ actor }) => listTargets(actor))

@@ -1,0 +1,1 @@
+export { uploadHandler as default } from '../../utils/tus/handler'
