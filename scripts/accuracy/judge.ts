@@ -1,0 +1,87 @@
+/** Runs one known capture through the engine and compares what came out with the truth. */
+import { defaultRecipe } from '../../shared/schemas/recipe'
+import { keepCount } from '../../shared/schemas/run'
+import { Engine } from '../../workers/run/engine'
+import { stackFigures } from '../../workers/score/figures'
+import { nodePool } from '../lib/node-pool'
+import { median, rankCorrelation, rms, type Row } from './rows'
+import { sceneErrors } from './scene-error'
+import type { KnownCapture } from './truth'
+
+const FRACTIONS = [0.01, 0.1, 0.5, 1]
+
+export async function judgeCapture(known: KnownCapture): Promise<Row[]> {
+  const rows: Row[] = []
+  const { references, strehl } = known
+  const row = (key: string, what: string, value: number, digits: number, want: Row['want']) =>
+    rows.push({ capture: known.name, what, value, digits, want, reference: references[key] ?? null, source: key in references ? known.referenceSource : '' })
+
+  const reader = await known.open()
+  const pool = nodePool(1)
+  const engine = new Engine(reader, { pool, budgetBytes: 2 ** 29 })
+  try {
+    const extended = known.scene !== 'stars'
+    const recipe = { ...defaultRecipe, score: { ...defaultRecipe.score, rankBy: extended ? 'laplacian' as const : 'peak' as const } }
+    const started = performance.now()
+    const state = await engine.run(recipe, known.optics, () => undefined, new AbortController().signal)
+    const took = performance.now() - started
+    const { survey, plan } = state.surveyed
+    const { table } = state.graded
+    const { shifts } = state.refined
+    const count = table.count
+    const frames = Array.from({ length: count }, (_, i) => i)
+    const scored = frames.filter(i => table.setAside[i] === 0)
+    const sure = frames.filter(i => shifts.setAside[i] === 0)
+
+    rows.push({ capture: known.name, what: `${survey.form}, window ${survey.windowPx} px, blur ${survey.blurPx} px, ${plan.hotPixels.length} faulty pixels, ${(count / took * 1000).toFixed(0)} frames/s in all`, value: count, digits: 0, reference: null, want: 'none', source: 'frames' })
+    const laplacian = rankCorrelation(scored.map(i => table.laplacian[i]!), scored.map(i => strehl[i]!))
+    const peak = rankCorrelation(scored.map(i => table.peak[i]!), scored.map(i => strehl[i]!))
+    row('score', 'rank correlation with the true Strehl: best score', Math.max(laplacian, peak), 3, 'higher')
+    row('', '  Laplacian variance', laplacian, 3, 'none')
+    row('', '  peak intensity', peak, 3, 'none')
+    row('', 'frames set aside', count - sure.length, 0, 'none')
+
+    const against = (x: number[], y: number[], which: number[]): number[] => {
+      const ex = which.map(i => -shifts.dx[i]! - x[i]!)
+      const ey = which.map(i => -shifts.dy[i]! - y[i]!)
+      const mx = median(ex)
+      const my = median(ey)
+      return ex.map((e, k) => Math.hypot(e - mx, ey[k]! - my))
+    }
+    const errors = against(known.peakX, known.peakY, sure)
+    const best = state.ranking.order.slice(0, Math.max(1, Math.round(count / 10)))
+    const errorOf = new Map(sure.map((i, k) => [i, errors[k]!]))
+    const bestErrors = [...best].map(i => errorOf.get(i)!)
+    row('median', 'shift against the PSF peak, registered frames: median, px', median(errors), 3, 'lower')
+    row('', '  rms, px', rms(errors), 3, 'none')
+    row('far', '  share off by more than 3 px', errors.filter(e => e > 3).length / errors.length, 4, 'lower')
+    row('best10median', 'shift against the PSF peak, best 10 %: median, px', median(bestErrors), 3, 'lower')
+    row('best10rms', '  rms, px', rms(bestErrors), 3, 'lower')
+    if (extended && known.tiltX && known.tiltY) row('tiltRms', 'shift against the wavefront tilt, registered frames: rms, px', rms(against(known.tiltX, known.tiltY, sure)), 3, 'lower')
+
+    for (const fraction of FRACTIONS) {
+      const kept = keepCount(fraction, state.ranking.order.length)
+      const image = await engine.stack(kept, false)
+      const percent = Math.round(fraction * 100)
+      if (!extended) {
+        const figures = stackFigures({ stack: image.samples, planes: image.planes, mosaic: false, noise: state.figurer.of(image).noise, count: kept, fraction, plan: state.surveyed.score, optics: known.optics })
+        row(`strehl${percent}`, `Strehl of the stack at ${percent} %`, figures.strehl ?? NaN, 3, 'higher')
+        const reachable = [...state.ranking.order.slice(0, kept)].reduce((sum, i) => sum + strehl[i]!, 0) / kept
+        row('', '  over the mean of these frames\' true Strehl', (figures.strehl ?? NaN) / reachable, 3, 'none')
+        row('', '  full width at half maximum, px', figures.fwhmPx ?? NaN, 3, 'none')
+        row('', '  peak over noise', figures.signalToNoise, 0, 'none')
+      }
+      else if (known.sceneImage && fraction > 0.02) {
+        const { error, transfer } = sceneErrors(image, known)
+        row(`nrms${percent}`, `rms error against the scene through a perfect telescope, ${percent} %`, error, 3, 'lower')
+        row('', '  transfer at 0.2 of the cut-off', transfer[0]!, 2, 'none')
+        row('', '  transfer at 0.3 of the cut-off', transfer[1]!, 2, 'none')
+      }
+    }
+    return rows
+  }
+  finally {
+    pool.end()
+    engine.close()
+  }
+}

@@ -1,0 +1,69 @@
+/** Captures made on the spot, with the truth that the simulator knows. */
+import type { StackImage } from '../../workers/api'
+import { defaultRecipe } from '../../shared/schemas/recipe'
+import { demoScene, rehearsalReader, type RehearsalSpec } from '../../workers/rehearse/index'
+import { Engine } from '../../workers/run/engine'
+import { nodePool } from '../lib/node-pool'
+import type { Row } from './rows'
+import type { KnownCapture } from './truth'
+
+function specs(): { spec: RehearsalSpec, scene: KnownCapture['scene'] }[] {
+  const double = demoScene('double')
+  return [
+    { spec: { ...double, frames: 600 }, scene: 'stars' },
+    { spec: { ...demoScene('triple'), frames: 600 }, scene: 'stars' },
+    // Close to the limit, near-equal, faint, behind a cloud, with a bump against the telescope.
+    {
+      spec: {
+        ...double, name: 'close pair through cloud', seed: 77, frames: 600, cloud: { atS: 3, widthS: 1.2, depth: 0.7 },
+        scene: { kind: 'stars', fluxElectrons: 9000, stars: [{ separationArcsec: 0, positionAngleDeg: 0, deltaMag: 0 }, { separationArcsec: 0.65, positionAngleDeg: 61, deltaMag: 0.3 }] },
+        motion: { ...double.motion, jumps: [{ frame: 300, dx: 11, dy: -7 }] },
+      },
+      scene: 'stars',
+    },
+    { spec: { ...demoScene('planet'), frames: 200 }, scene: 'planet' },
+    { spec: { ...demoScene('terrain'), frames: 120 }, scene: 'terrain' },
+  ]
+}
+
+export async function* rehearsalTruths(): AsyncGenerator<KnownCapture> {
+  for (const { spec, scene } of specs()) {
+    const reader = await rehearsalReader(spec)
+    const truths = Array.from({ length: spec.frames }, (_, i) => reader.truth(i))
+    yield {
+      name: `rehearsal: ${spec.name}`,
+      scene,
+      open: () => Promise.resolve(reader),
+      strehl: truths.map(t => t.strehl),
+      peakX: truths.map(t => t.placeX + t.psfPeakX),
+      peakY: truths.map(t => t.placeY + t.psfPeakY),
+      tiltX: null,
+      tiltY: null,
+      optics: spec.optics,
+      references: {},
+      referenceSource: '',
+      sceneImage: null,
+      wavelengthsNm: [spec.optics.wavelengthNm],
+    }
+  }
+}
+
+/** A capture of nothing: it must be called that, and whatever is stacked must not draw the reference. */
+export async function blankRow(): Promise<Row> {
+  const spec: RehearsalSpec = { ...demoScene('double'), name: 'nothing but noise', scene: { kind: 'blank' }, frames: 400 }
+  const reader = await rehearsalReader(spec)
+  const pool = nodePool(1)
+  const engine = new Engine(reader, { pool, budgetBytes: 2 ** 28 })
+  try {
+    const { surveyed, ranking } = await engine.run(defaultRecipe, null, () => undefined, new AbortController().signal)
+    const stack: StackImage | null = ranking.order.length > 0 ? await engine.stack(ranking.order.length, false) : null
+    return {
+      capture: 'noise only', what: `told as "no signal" (1 is yes); ${ranking.order.length} of ${spec.frames} frames were left to stack${stack ? `, stack of ${stack.count}` : ''}`,
+      value: surveyed.survey.noSignal ? 1 : 0, digits: 0, reference: 1, want: 'higher', source: 'alignment on noise draws its template (Henderson 2013, PNAS 110, 18037)',
+    }
+  }
+  finally {
+    pool.end()
+    engine.close()
+  }
+}
