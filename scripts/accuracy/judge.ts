@@ -1,6 +1,7 @@
 /** Runs one known capture through the engine and compares what came out with the truth. */
 import { defaultRecipe } from '../../shared/schemas/recipe'
 import { keepCount } from '../../shared/schemas/run'
+import { prepareColour } from '../../workers/prepare/frame'
 import { Engine } from '../../workers/run/engine'
 import { stackFigures } from '../../workers/score/figures'
 import { nodePool } from '../lib/node-pool'
@@ -59,6 +60,12 @@ export async function judgeCapture(known: KnownCapture): Promise<Row[]> {
     row('best10rms', '  rms, px', rms(bestErrors), 3, 'lower')
     if (extended && known.tiltX && known.tiltY) row('tiltRms', 'shift against the wavefront tilt, registered frames: rms, px', rms(against(known.tiltX, known.tiltY, sure)), 3, 'lower')
 
+    if (known.sceneImage) {
+      const stored = engine.average()
+      const colour = plan.mosaic === 'none' ? stored.samples : new Float32Array(3 * plan.width * plan.height)
+      if (plan.mosaic !== 'none') prepareColour(stored.samples as Float32Array<ArrayBuffer>, 0, plan, colour)
+      row('nrms0', 'rms error against the scene through a perfect telescope, unregistered', sceneErrors({ ...stored, samples: colour, planes: plan.mosaic === 'none' ? stored.planes : 3 }, known).error, 3, 'none')
+    }
     for (const fraction of FRACTIONS) {
       const kept = keepCount(fraction, state.ranking.order.length)
       const image = await engine.stack(kept, false)

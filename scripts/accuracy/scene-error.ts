@@ -53,7 +53,7 @@ function onePlane(stack: Float32Array, width: number, height: number, scene: Flo
       spectrum[o + 1]! *= t
     }
   }
-  const margin = 40
+  const margin = 12
   const w = width - 2 * margin
   const h = height - 2 * margin
   // Where the stack's middle lies in the scene: best of a search about the scene's middle by whole, then fractional pixels.

@@ -3,11 +3,12 @@
  * whether there is anything at all.
  */
 import { createRegistrar, emptyShift } from '../register/registrar'
-import { blurNoiseGain, createWindowBlur, laplacianNoiseGain } from './blur'
+import { blurNoiseGain, createWindowBlur } from './blur'
 import { createBlocks, fillBlocks, quantileInPlace } from './blocks'
-import { laplacianVariance, quadraticPeak } from './measures'
+import { quadraticPeak } from './measures'
 import { frameNoise } from './noise'
 import { makeScorePlan } from './plan'
+import { chooseExtendedBlur } from './scale'
 import { createScorer, emptyScore } from './scorer'
 import { findSignal } from './signal'
 import type { FrameScore, Survey, TargetForm } from './types'
@@ -41,7 +42,8 @@ export function survey(frames: Float32Array[], width: number, height: number): S
     first.blurPx = starBlur(frames, width, height, first)
   }
   else {
-    first.blurPx = extendedBlur(frames, width, height, noise)
+    const scores = scoreAll(frames, width, height, first)
+    first.blurPx = chooseExtendedBlur(frames, width, height, scores, form === 'disc' ? Math.ceil(0.8 * windowPx) : windowPx)
   }
   return withReference(frames, width, height, first)
 }
@@ -182,25 +184,6 @@ function starBlur(frames: Float32Array[], width: number, height: number, first: 
   const strength = median(ratios)
   const faint = Math.min(1, Math.max(0, (40 - strength) / 30))
   return roundTenth(Math.min(4, Math.max(0.5, fwhm * (0.2 + 0.22 * faint))))
-}
-
-/** The least smoothing at which noise makes up less than a fifth of the Laplacian's variance. */
-function extendedBlur(frames: Float32Array[], width: number, height: number, noise: number): number {
-  const columns = Math.min(width, 256)
-  const rows = Math.min(height, 256)
-  const x0 = (width - columns) >> 1
-  const y0 = (height - rows) >> 1
-  const smooth = new Float32Array(columns * rows)
-  const sample = frames.filter((_, i) => i % Math.max(1, Math.floor(frames.length / 8)) === 0)
-  for (const sigma of [0.7, 1, 1.3, 1.6, 2, 2.5, 3]) {
-    const blur = createWindowBlur(sigma, columns, rows)
-    const shares = sample.map((frame) => {
-      blur.blur(frame, width, height, x0, y0, columns, rows, smooth)
-      return noise * noise * laplacianNoiseGain(sigma) / Math.max(1e-12, laplacianVariance(smooth, columns, rows))
-    })
-    if (median(shares) < 0.2) return sigma
-  }
-  return 3
 }
 
 const roundTenth = (value: number): number => Math.round(value * 10) / 10
