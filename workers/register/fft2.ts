@@ -24,6 +24,16 @@ export function createTransform(n: number): FFT {
 /** Number of values (2 per complex) in a spectrum with this cut. */
 export const spectrumLength = (cut: number): number => 2 * (cut + 1) * (2 * cut + 1)
 
+/** out = a × b, complex; out may be a. */
+export function multiply(a: Float64Array, b: Float64Array, out: Float64Array): void {
+  for (let o = 0; o < a.length; o += 2) {
+    const re = a[o]!
+    const im = a[o + 1]!
+    out[o] = re * b[o]! - im * b[o + 1]!
+    out[o + 1] = re * b[o + 1]! + im * b[o]!
+  }
+}
+
 export interface ForwardTransform {
   /** Spectrum of an n × n real window; rows outside [firstRow, lastRow] must be zero and are skipped. */
   forward(window: Float32Array, out: Float64Array, firstRow?: number, lastRow?: number): void

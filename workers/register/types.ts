@@ -18,6 +18,11 @@ export interface FrameShift {
   /** 0 (no better than chance) to 1 (no second candidate near). */
   confidence: number
   sure: boolean
+  /**
+   * Extended targets: how much of the reference's detail this frame carries (1: as much as the reference), found by
+   * deconvolution; follows the Strehl ratio. NaN for stars, whose peak says it.
+   */
+  transfer: number
 }
 
 export interface RegisterPlan {
