@@ -4,7 +4,7 @@
  * used through composables/useCore.ts, the only module that touches comlink.
  */
 import type { CaptureFacts, CaptureOverrides, TargetKind } from '../shared/schemas/capture'
-import type { Recipe } from '../shared/schemas/recipe'
+import type { Recipe, ScoreMeasure } from '../shared/schemas/recipe'
 import type { DisplayStretch, LadderInfo, Provenance, RunResult, SetAsideReason, StackFigures } from '../shared/schemas/run'
 
 /** A capture to open: files picked by the user (one file, or the files of a folder in any order), or a demo. */
@@ -51,7 +51,7 @@ export interface FrameColumns {
 /** Stage results as they come. Arrays are copies that the receiver owns. */
 export type RunEvent =
   | { kind: 'progress', progress: PassProgress }
-  | { kind: 'surveyed', target: TargetKind, chosen: { blurPx: number, windowPx: number, centre: { x: number, y: number } }, noise: number, noSignal: boolean, preview: StackImage }
+  | { kind: 'surveyed', target: TargetKind, chosen: { rankBy?: ScoreMeasure, blurPx: number, windowPx: number, centre: { x: number, y: number } }, noise: number, noSignal: boolean, preview: StackImage }
   | { kind: 'frames', columns: FrameColumns, complete: boolean }
   | { kind: 'preview', image: StackImage }
   | { kind: 'ranked', ranked: number, setAside: Partial<Record<SetAsideReason, number>> }

@@ -22,9 +22,8 @@ export async function judgeCapture(known: KnownCapture): Promise<Row[]> {
   const engine = new Engine(reader, { pool, budgetBytes: 2 ** 29 })
   try {
     const extended = known.scene !== 'stars'
-    const recipe = { ...defaultRecipe, score: { ...defaultRecipe.score, rankBy: extended ? 'laplacian' as const : 'peak' as const } }
     const started = performance.now()
-    const state = await engine.run(recipe, known.optics, () => undefined, new AbortController().signal)
+    const state = await engine.run(defaultRecipe, known.optics, () => undefined, new AbortController().signal)
     const took = performance.now() - started
     const { survey, plan } = state.surveyed
     const { table } = state.graded
@@ -37,9 +36,11 @@ export async function judgeCapture(known: KnownCapture): Promise<Row[]> {
     rows.push({ capture: known.name, what: `${survey.form}, window ${survey.windowPx} px, blur ${survey.blurPx} px, ${plan.hotPixels.length} faulty pixels, ${(count / took * 1000).toFixed(0)} frames/s in all`, value: count, digits: 0, reference: null, want: 'none', source: 'frames' })
     const laplacian = rankCorrelation(scored.map(i => table.laplacian[i]!), scored.map(i => strehl[i]!))
     const peak = rankCorrelation(scored.map(i => table.peak[i]!), scored.map(i => strehl[i]!))
-    row('score', 'rank correlation with the true Strehl: best score', Math.max(laplacian, peak), 3, 'higher')
+    const transfer = extended ? rankCorrelation(sure.map(i => shifts.transfer[i]!), sure.map(i => strehl[i]!)) : NaN
+    row('score', 'rank correlation with the true Strehl: the score that ranks', state.measure === 'transfer' ? transfer : peak, 3, 'higher')
     row('', '  Laplacian variance', laplacian, 3, 'none')
     row('', '  peak intensity', peak, 3, 'none')
+    if (extended) row('', '  transfer of detail', transfer, 3, 'none')
     row('', 'frames set aside', count - sure.length, 0, 'none')
 
     const against = (x: number[], y: number[], which: number[]): number[] => {

@@ -2,7 +2,7 @@
  * A recipe as a paragraph: a list of text pieces and editable values. The bench, the archive, the
  * difference of two recipes, the review and the printed report all use this one module.
  */
-import type { Recipe } from '../schemas/recipe'
+import type { Recipe, ScoreMeasure } from '../schemas/recipe'
 import { combineMethods, registerMethods, resampleKernels, scoreMeasures, windowSizes } from '../schemas/recipe'
 
 /** How a value is edited. Numbers are in the unit shown; `scale` turns the stored value into the shown one (0.1 → 10 %). */
@@ -24,9 +24,9 @@ export type RecipePath =
   | 'restore.scales' | 'restore.gain' | 'restore.thresholdSigma'
 
 /** What the survey chose where the recipe leaves the choice to Lull; shown as "1.2 px, chosen". */
-export interface Chosen { blurPx?: number, windowPx?: number }
+export interface Chosen { rankBy?: ScoreMeasure, blurPx?: number, windowPx?: number }
 
-const measureLabels = { laplacian: 'Laplacian variance', peak: 'peak intensity' } as const
+const measureLabels = { laplacian: 'Laplacian variance', peak: 'peak intensity', transfer: 'transfer of detail' } as const
 const methodLabels = { correlation: 'cross-correlation', speckle: 'brightest speckle', centroid: 'centroid' } as const
 const kernelLabels = { cubic: 'cubic', bilinear: 'linear', nearest: 'whole-pixel' } as const
 const roundLabels = ['not refined', 'refined once', 'refined twice', 'refined three times'] as const
@@ -55,6 +55,8 @@ export function recipePieces(recipe: Recipe, chosen: Chosen = {}): Piece[] {
   const blurText = score.blurPx === null
     ? (chosen.blurPx === undefined ? 'a fitting width' : `${chosen.blurPx.toFixed(1)} px`)
     : `${score.blurPx.toFixed(1)} px`
+  const measure = score.rankBy ?? chosen.rankBy
+  const measureText = measure === undefined ? 'most fitting measure' : measureLabels[measure]
   const windowText = register.windowPx === null
     ? (chosen.windowPx === undefined ? 'a fitting size' : `${chosen.windowPx} px`)
     : `${register.windowPx} px`
@@ -62,7 +64,8 @@ export function recipePieces(recipe: Recipe, chosen: Chosen = {}): Piece[] {
     choice('prepare.repairHotPixels', 'Hot pixels', prepare.repairHotPixels, [
       { value: true, label: 'Repair hot pixels' }, { value: false, label: 'Leave hot pixels' }]),
     text(' and score each frame by its '),
-    choice('score.rankBy', 'Score', score.rankBy, scoreMeasures.map(value => ({ value, label: measureLabels[value] }))),
+    { ...choice('score.rankBy', 'Score', score.rankBy, [
+      { value: null, label: 'let Lull choose' }, ...scoreMeasures.map(value => ({ value, label: measureLabels[value] }))]), text: measureText } as Piece,
     text(' after a blur of '),
     { kind: 'value', path: 'score.blurPx', name: 'Blur before scoring', value: score.blurPx, text: blurText,
       control: { kind: 'number', min: 0, max: 8, step: 0.1, unit: 'px', scale: 1, nullLabel: 'let Lull choose' } },

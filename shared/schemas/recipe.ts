@@ -6,7 +6,8 @@ import { z } from 'zod'
 
 export const RECIPE_VERSION = 1
 
-export const scoreMeasures = ['laplacian', 'peak'] as const
+/** transfer: how much of the reference's detail a frame carries; known after registration, for extended targets. */
+export const scoreMeasures = ['laplacian', 'peak', 'transfer'] as const
 export const registerMethods = ['correlation', 'speckle', 'centroid'] as const
 export const combineMethods = ['mean'] as const
 export const resampleKernels = ['cubic', 'bilinear', 'nearest'] as const
@@ -19,8 +20,8 @@ export const recipeSchema = z.object({
     repairHotPixels: z.boolean(),
   }).strict(),
   score: z.object({
-    /** The measure that ranks; both are always computed. */
-    rankBy: z.enum(scoreMeasures),
+    /** The measure that ranks; all are always computed. null takes what fits the target (see rankingMeasure). */
+    rankBy: z.enum(scoreMeasures).nullable(),
     /** Sigma of the Gaussian blur before scoring, px; null chooses it from noise and sampling. */
     blurPx: z.number().min(0).max(8).nullable(),
   }).strict(),
@@ -55,6 +56,13 @@ export const recipeSchema = z.object({
 
 export type Recipe = z.infer<typeof recipeSchema>
 export type ScoreMeasure = typeof scoreMeasures[number]
+
+/** The measure that ranks frames of a target: as the recipe says, or a star's peak and an extended target's transfer of detail. */
+export function rankingMeasure(rankBy: ScoreMeasure | null, kind: 'star' | 'extended'): ScoreMeasure {
+  if (kind === 'star') return rankBy === null || rankBy === 'transfer' ? 'peak' : rankBy
+  return rankBy ?? 'transfer'
+}
+
 export type RegisterMethod = typeof registerMethods[number]
 export type ResampleKernel = typeof resampleKernels[number]
 
@@ -62,7 +70,7 @@ export type ResampleKernel = typeof resampleKernels[number]
 export const defaultRecipe: Recipe = {
   version: RECIPE_VERSION,
   prepare: { repairHotPixels: true },
-  score: { rankBy: 'peak', blurPx: null },
+  score: { rankBy: null, blurPx: null },
   register: { method: 'correlation', windowPx: null, centre: null, referenceFraction: 0.05, refineRounds: 2 },
   keep: { fraction: 0.1 },
   combine: { method: 'mean', kernel: 'cubic' },

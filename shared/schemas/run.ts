@@ -1,7 +1,7 @@
 /** A run: one recipe applied to one capture, with everything that came of it. */
 import { z } from 'zod'
 import { captureFactsSchema, targetKindSchema } from './capture'
-import { recipeSchema } from './recipe'
+import { recipeSchema, scoreMeasures } from './recipe'
 
 /** The standard keep fractions of the proofs, ascending. */
 export const proofFractions = [0.01, 0.02, 0.05, 0.1, 0.2, 0.5, 1] as const
@@ -65,7 +65,7 @@ export const runResultSchema = z.object({
   recipe: recipeSchema,
   recipeHash: z.string().regex(/^[0-9a-f]{64}$/),
   kind: targetKindSchema,
-  chosen: z.object({ blurPx: z.number(), windowPx: z.number(), centre: z.object({ x: z.number(), y: z.number() }) }),
+  chosen: z.object({ rankBy: z.enum(scoreMeasures).optional(), blurPx: z.number(), windowPx: z.number(), centre: z.object({ x: z.number(), y: z.number() }) }),
   keep: z.object({ fraction: z.number(), count: z.number().int().nonnegative() }),
   /** Ranked frames and, per reason, those set aside. */
   ranked: z.number().int().nonnegative(),

@@ -24,7 +24,7 @@ describe('canonical form', () => {
 
 describe('the paragraph', () => {
   it('reads as sentences', () => {
-    expect(recipeText(defaultRecipe, { blurPx: 1, windowPx: 64 })).toBe(
+    expect(recipeText(defaultRecipe, { rankBy: 'peak', blurPx: 1, windowPx: 64 })).toBe(
       'Repair hot pixels and score each frame by its peak intensity after a blur of 1.0 px. Register in a window of 64 px by cross-correlation, '
       + 'against the best 5 %, refined twice. Keep the best 10 %, and combine them by their mean with cubic resampling. Restore nothing.')
   })

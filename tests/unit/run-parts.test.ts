@@ -10,9 +10,9 @@ import type { PassProgress } from '../../workers/api'
 
 describe('ranking', () => {
   it('puts larger scores first, breaks ties by frame number and leaves out what is set aside', () => {
-    const peak = Float64Array.of(2, 5, Number.NaN, 5, 9, 1)
+    const score = Float64Array.of(2, 5, Number.NaN, 5, 9, 1)
     const setAside = Uint8Array.of(0, 0, 0, 0, reasonCode('saturated'), 0)
-    const { order, rank } = rankFrames({ peak, laplacian: peak, setAside }, 'peak')
+    const { order, rank } = rankFrames({ score, setAside })
     expect([...order]).toEqual([1, 3, 0, 5, 2])
     expect([...rank]).toEqual([3, 1, 5, 2, 0, 4])
     expect(countSetAside(setAside)).toEqual({ saturated: 1 })

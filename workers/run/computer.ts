@@ -115,6 +115,7 @@ export class Computer {
     reply.dx[i] = this.#shift.dx
     reply.dy[i] = this.#shift.dy
     reply.confidence[i] = this.#shift.confidence
+    reply.transfer[i] = this.#shift.transfer
     reply.sure[i] = this.#shift.sure ? 1 : 0
   }
 
@@ -183,5 +184,5 @@ export function addFrame({ plan, planes, scale, kernel, kernels, frame }: Adder,
 }
 
 function shiftReply(n: number): ShiftReply {
-  return { dx: new Float64Array(n), dy: new Float64Array(n), confidence: new Float64Array(n), sure: new Uint8Array(n) }
+  return { dx: new Float64Array(n), dy: new Float64Array(n), confidence: new Float64Array(n), transfer: new Float64Array(n), sure: new Uint8Array(n) }
 }

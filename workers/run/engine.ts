@@ -7,11 +7,11 @@ import type { FrameReader } from '../decode/types'
 import { hasSimd } from '../kernels/index'
 import { makeRegisterPlan } from '../register/plan'
 import { restore } from '../restore/restore'
-import type { Recipe } from '../../shared/schemas/recipe'
+import { rankingMeasure, type Recipe, type ScoreMeasure } from '../../shared/schemas/recipe'
 import type { Provenance, StackFigures } from '../../shared/schemas/run'
 import { engineName, lullVersion } from './version'
 import { averageImage } from './average'
-import { frameColumns } from './columns'
+import { frameColumns, scoreColumn } from './columns'
 import type { PassContext } from './context'
 import { Figurer } from './figures'
 import { FrameStore, type FrameStoreOptions } from './frames'
@@ -39,6 +39,8 @@ export interface EngineOptions extends Omit<FrameStoreOptions, 'shared'> {
 /** Everything a finished run consists of. */
 export interface RunState {
   recipe: Recipe
+  /** The measure that ranked. */
+  measure: ScoreMeasure
   keys: StageKeys
   surveyed: Surveyed
   graded: Graded
@@ -76,18 +78,18 @@ export class Engine {
     const progress = new ProgressMeter(report => emit({ kind: 'progress', progress: report }))
     const context: PassContext = { frames: this.frames, pool: this.#pool, signal, progress, emit }
     const keys = await stageKeys(this.reader.facts, recipe)
-    const by = recipe.score.rankBy
     const { seconds } = this.reader
 
     this.#emit = emit
     const surveyed = await this.#stage('survey', keys.survey, () => surveyPass(context, recipe))
-    this.#emitSurvey(surveyed, emit)
+    const by = rankingMeasure(recipe.score.rankBy, surveyed.survey.kind)
+    this.#emitSurvey(surveyed, by, emit)
 
     const graded = await this.#stage('grade', keys.grade, () => this.#grade(context, surveyed, recipe, keys))
     emit({ kind: 'frames', columns: frameColumns(graded.table, null, null, by, seconds), complete: recipe.register.refineRounds === 0 })
 
     const refined = await this.#stage('refine', keys.refine, () => this.#refine(context, surveyed, graded, recipe, keys))
-    const ranking = rankFrames({ ...graded.table, setAside: refined.shifts.setAside }, by)
+    const ranking = rankFrames({ score: scoreColumn(graded.table, refined.shifts, by), setAside: refined.shifts.setAside })
     emit({ kind: 'frames', columns: frameColumns(graded.table, refined.shifts, ranking.rank, by, seconds), complete: true })
     emit({ kind: 'ranked', ranked: ranking.order.length, setAside: countSetAside(refined.shifts.setAside) })
 
@@ -97,7 +99,7 @@ export class Engine {
     const same = this.#state?.ladder === ladder ? this.#state : null
     const stacker = same?.stacker ?? new Stacker(ladder, ranking.order, refined.shifts, this.frames, surveyed.plan)
     const figurer = new Figurer(stacker, surveyed, optics)
-    this.#state = { recipe, keys, surveyed, graded, refined, ranking, ladder, stacker, figurer }
+    this.#state = { recipe, measure: by, keys, surveyed, graded, refined, ranking, ladder, stacker, figurer }
     const { counts, width, height, planes } = ladder
     if (counts.length > 0) emit({ kind: 'ladder', ladder: { counts, width, height, planes } })
     await this.#timed('proofs', () => proofs(this.#state!, this.averageShown(), context))
@@ -181,7 +183,7 @@ export class Engine {
     const first = firstReference(surveyed)
     const register = recipe.register.refineRounds > 0 ? null : makeRegisterPlan(surveyed.survey, recipe, surveyed.plan.width, surveyed.plan.height, first.luminance, first.x, first.y)
     const resume = await this.#stages.load<GradeProgress & { blockFrames: number }>('grading', keys.grade)
-    const by = recipe.score.rankBy
+    const by = rankingMeasure(recipe.score.rankBy, surveyed.survey.kind)
     const graded = await gradePass(context, surveyed, {
       register,
       resume: resume?.blockFrames === this.frames.blockFrames ? resume : null,
@@ -211,8 +213,8 @@ export class Engine {
     return refined
   }
 
-  #emitSurvey({ survey, score, plan }: Surveyed, emit: (event: RunEvent) => void): void {
-    const chosen = { blurPx: score.blurPx, windowPx: score.windowPx, centre: score.centre }
+  #emitSurvey({ survey, score, plan }: Surveyed, rankBy: ScoreMeasure, emit: (event: RunEvent) => void): void {
+    const chosen = { rankBy, blurPx: score.blurPx, windowPx: score.windowPx, centre: score.centre }
     const preview = luminanceImage(survey.reference, plan.width, plan.height, 1)
     emit({ kind: 'surveyed', target: survey.kind, chosen, noise: survey.noise, noSignal: survey.noSignal, preview })
   }

@@ -60,8 +60,8 @@ class Exporter {
   }
 
   #columns() {
-    const { graded, refined, ranking, recipe } = this.#engine.state!
-    return frameColumns(graded.table, refined.shifts, ranking.rank, recipe.score.rankBy, null)
+    const { graded, refined, ranking, measure } = this.#engine.state!
+    return frameColumns(graded.table, refined.shifts, ranking.rank, measure, null)
   }
 
   /** The stack as displayed: restored where the recipe says so. */
@@ -121,8 +121,8 @@ class Exporter {
   }
 
   #chosen() {
-    const { blurPx, windowPx } = this.#engine.state!.surveyed.score
-    return { blurPx, windowPx }
+    const { measure, surveyed: { score: { blurPx, windowPx } } } = this.#engine.state!
+    return { rankBy: measure, blurPx, windowPx }
   }
 
   async #cards(kept: { count: number, fraction: number } | null): Promise<FitsCard[]> {

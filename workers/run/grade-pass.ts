@@ -87,6 +87,7 @@ function fill(table: GradeTable, first: number, reply: GradeReply, reference: { 
   for (const name of ['laplacian', 'peak', 'flux', 'background', 'x', 'y'] as const) table[name].set(reply[name], first)
   table.dx.set(reply.shifts?.dx ?? reply.x.map(x => reference.refX - x), first)
   table.dy.set(reply.shifts?.dy ?? reply.y.map(y => reference.refY - y), first)
+  if (reply.shifts) table.transfer.set(reply.shifts.transfer, first)
   for (let i = 0; i < reply.flags.length; i++) {
     const flags = reply.flags[i]!
     const unsure = reply.shifts !== null && reply.shifts.sure[i] === 0

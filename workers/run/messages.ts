@@ -41,7 +41,7 @@ export interface GradeReply {
   shifts: ShiftReply | null
 }
 /** Shifts in the order of the picks. */
-export interface ShiftReply { dx: Float64Array, dy: Float64Array, confidence: Float64Array, sure: Uint8Array }
+export interface ShiftReply { dx: Float64Array, dy: Float64Array, confidence: Float64Array, transfer: Float64Array, sure: Uint8Array }
 /** Sums of the asked slots, one after the other, as exact integers. */
 export interface TakeReply { sums: (Int32Array | Float64Array)[] }
 

@@ -1,22 +1,20 @@
-import type { ScoreMeasure } from '../../shared/schemas/recipe'
 import { setAsideReasons, type SetAsideReason } from '../../shared/schemas/run'
 
 /** Code of a reason in the frame table: 0 is ranked. */
 export const reasonCode = (reason: SetAsideReason): number => 1 + setAsideReasons.indexOf(reason)
 
 /** Scores and verdicts that ranking reads; index = frame. `setAside` holds reason codes. */
-export interface Rankable { laplacian: Float64Array, peak: Float64Array, setAside: Uint8Array }
+export interface Rankable { score: Float64Array, setAside: Uint8Array }
 
 /** Frames best first, and their rank by frame (1 is best, 0 set aside). */
 export interface Ranking { order: Int32Array, rank: Int32Array }
 
 /**
- * Ranks the frames that are not set aside by a score, larger first, ties by the smaller frame number.
+ * Ranks the frames that are not set aside by their score, larger first, ties by the smaller frame number.
  * A score that is not a number never ranks above one that is.
  */
-export function rankFrames(frames: Rankable, by: ScoreMeasure): Ranking {
-  const score = frames[by]
-  const order = Int32Array.from(indexesWhere(frames.setAside, code => code === 0))
+export function rankFrames({ score, setAside }: Rankable): Ranking {
+  const order = Int32Array.from(indexesWhere(setAside, code => code === 0))
   const value = (i: number) => Number.isNaN(score[i]!) ? Number.NEGATIVE_INFINITY : score[i]!
   order.sort((a, b) => value(b) - value(a) || a - b)
   const rank = new Int32Array(score.length)

@@ -42,11 +42,11 @@ export async function refinePass(context: PassContext, surveyed: Surveyed, grade
   const { referenceFraction, refineRounds } = recipe.register
   const shifts: ShiftTable = {
     dx: graded.dx.slice(), dy: graded.dy.slice(),
-    confidence: new Float64Array(graded.count).fill(Number.NaN), setAside: graded.setAside.slice(),
+    confidence: new Float64Array(graded.count).fill(Number.NaN), transfer: graded.transfer.slice(), setAside: graded.setAside.slice(),
   }
   let reference = firstReference(surveyed)
   // A measure that fits the target chooses the reference, so that the shifts do not depend on what ranks.
-  const { order } = rankFrames(graded, surveyed.survey.kind === 'star' ? 'peak' : 'laplacian')
+  const { order } = rankFrames({ score: surveyed.survey.kind === 'star' ? graded.peak : graded.laplacian, setAside: graded.setAside })
   const best = nextReferenceFrames(order, referenceFraction).sort()
   // With rounds to come the first pass took places only: the best frames are registered before they are added.
   if (refineRounds > 0) await registerFrames(context, surveyed, recipe, reference, best, graded, shifts, 0)
@@ -149,6 +149,7 @@ async function registerFrames(context: PassContext, surveyed: Surveyed, recipe: 
           shifts.dx[frame] = reply.dx[k]!
           shifts.dy[frame] = reply.dy[k]!
           shifts.confidence[frame] = reply.confidence[k]!
+          shifts.transfer[frame] = reply.transfer[k]!
           shifts.setAside[frame] = reply.sure[k] ? 0 : reasonCode('unsure')
         })
         progress.add(ids.length)

@@ -16,7 +16,7 @@ export async function runResult(engine: Engine, recipe: Recipe, recipeHash: stri
   const { counts, width, height, planes } = ladder
   return {
     facts: engine.reader.facts, recipe, recipeHash, kind: survey.kind,
-    chosen: { blurPx: score.blurPx, windowPx: score.windowPx, centre: score.centre },
+    chosen: { rankBy: state.measure, blurPx: score.blurPx, windowPx: score.windowPx, centre: score.centre },
     keep: { fraction: recipe.keep.fraction, count },
     ranked: stacker.ranked, setAside: countSetAside(refined.shifts.setAside),
     figures: figurer.of(image), proofs, average: figurer.ofAverage(engine.averageShown(), graded.table.count),

@@ -49,7 +49,7 @@ export async function surveyPass({ frames, signal, progress }: PassContext, reci
     return luminance
   })
   await breathe()
-  const found = survey(planes, facts.width, facts.height)
+  const found = survey(planes, facts.width, facts.height, facts.mosaic !== 'none')
   await breathe()
   signal.throwIfAborted()
   const score = makeScorePlan(found, recipe, facts.width, facts.height)

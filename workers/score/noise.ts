@@ -2,10 +2,12 @@
 import { quantileInPlace } from './blocks'
 
 /**
- * Noise of one sample in the darker half of a frame: from differences of samples three apart (farther than the
- * filter that makes a mosaic's luminance reaches), each less the mean of its neighbours' difference, by their median.
+ * Noise of one sample in the darker half of a frame: from second differences along rows (a slope cancels in them;
+ * their variance is 6 sigma²), by the mean of their lower nine tenths.
+ * @param lag distance of the samples: 1 where neighbours' noise is independent, so that detail hardly counts; 3 for
+ * resampled frames and the luminance of a mosaic, whose neighbours share noise
  */
-export function frameNoise(frame: Float32Array, width: number, height: number): number {
+export function frameNoise(frame: Float32Array, width: number, height: number, lag = 3): number {
   const every = Math.max(1, Math.floor(width * height / 40_000))
   const levels = new Float32Array(Math.ceil(width * height / every))
   let n = 0
@@ -13,11 +15,11 @@ export function frameNoise(frame: Float32Array, width: number, height: number): 
   const middle = quantileInPlace(levels, n, 0.5)
   const differences = new Float32Array(Math.ceil(width * height / every) + 1)
   let m = 0
-  for (let i = 3; i + 3 < width * height; i += every) {
+  for (let i = lag; i + lag < width * height; i += every) {
     const x = i % width
-    if (x < 3 || x + 3 >= width || frame[i]! > middle) continue
+    if (x < lag || x + lag >= width || frame[i]! > middle) continue
     // A slope cancels in the second difference; its variance is 6 sigma².
-    differences[m++] = Math.abs(frame[i - 3]! - 2 * frame[i]! + frame[i + 3]!)
+    differences[m++] = Math.abs(frame[i - lag]! - 2 * frame[i]! + frame[i + lag]!)
   }
   // Whole-number samples make ties at a low noise: the mean of the lower nine tenths is steadier than the median,
   // and rounding alone is worth 1/√12 of a unit.
