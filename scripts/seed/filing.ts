@@ -8,8 +8,8 @@ import type { WorkedRun } from './work'
 /** What tells one run of the demo from the others. */
 export interface RunIdentity { target: string, night: string, recipeVersionId: string, recipeName: string, version: number }
 
-export async function findRun(owner: Member, identity: RunIdentity, state: 'filed' | 'announced'): Promise<RunSummary | null> {
-  const page = await owner.call<RunPage>('GET', `/api/runs?member=${owner.id}&state=${state}&pageSize=100&from=${identity.night}&to=${identity.night}`)
+export async function findFiled(owner: Member, identity: RunIdentity): Promise<RunSummary | null> {
+  const page = await owner.call<RunPage>('GET', `/api/runs?member=${owner.id}&state=filed&pageSize=100&from=${identity.night}&to=${identity.night}`)
   return page.items.find(run => run.owner.id === owner.id && run.target.name === identity.target && run.night === identity.night
     && run.recipe?.name === identity.recipeName && run.recipe.version === identity.version) ?? null
 }
@@ -25,24 +25,14 @@ export async function fileRun(
 ): Promise<RunDetail> {
   const files = worked.files.map(file => described(file.role, file.name, file.bytes))
   if (options.raw) files.push(described('raw', options.raw.name, options.raw.bytes))
-  const run = await continued(owner, identity, files) ?? await announced(owner, identity, worked, files, options)
+  // The server knows a run that was announced before: what has arrived of it stays.
+  const run = await announced(owner, identity, worked, files, options)
   for (const file of run.files) {
     if (file.state === 'received') continue
     const local = files.find(({ role, sha256 }) => role === file.role && sha256 === file.sha256)!
     await owner.upload(file.id, local.bytes)
   }
   return owner.call<RunDetail>('POST', `/api/runs/${run.id}/file`, {})
-}
-
-/** A run that was announced before with exactly these bytes goes on; one with others is withdrawn. */
-async function continued(owner: Member, identity: RunIdentity, files: FiledFile[]): Promise<RunDetail | null> {
-  const summary = await findRun(owner, identity, 'announced')
-  if (!summary) return null
-  const run = await owner.call<RunDetail>('GET', `/api/runs/${summary.id}`)
-  const same = run.files.length === files.length && run.files.every(file => file.state !== 'refused' && files.some(({ role, sha256 }) => role === file.role && sha256 === file.sha256))
-  if (same) return run
-  await owner.call('DELETE', `/api/runs/${run.id}`)
-  return null
 }
 
 function announced(owner: Member, identity: RunIdentity, worked: WorkedRun, files: FiledFile[], options: { instrumentId: string, replacesRunId: string | null, note: string }): Promise<RunDetail> {

@@ -1,4 +1,4 @@
-/** Reviews of the demo: one accepted, one that asked for another pass, one open with pins and a proposal. */
+/** Reviews of the demo: one accepted, one that asked for another pass, two open, of which one has pins and a proposal. */
 import type { Pin, RunDetail, ShareLink } from '../../shared/api/archive'
 import type { Recipe } from '../../shared/schemas/recipe'
 import type { Members } from './library'
@@ -29,6 +29,10 @@ export const reviewPlans: Record<string, ReviewPlan> = {
     remarks: [{ by: 'ines', pin: 0, text: 'I kept more because the single frames look so noisy.' }, { by: 'matthis', pin: 0, text: 'A fifth still has some fifty frames. Try it, and restore the two finest scales with care.' }],
     proposal: { text: 'A fifth of the frames, two scales restored.', change: recipe => ({ ...recipe, keep: { fraction: 0.2 }, restore: { scales: 2, gain: 1.8, thresholdSigma: 3 } }) },
     verdict: { verdict: 'another-pass', text: 'Good capture. One more pass with fewer frames, please.' },
+  },
+  'second-planet': {
+    ask: 'The second pass, as you asked: a fifth of the frames, two scales restored.',
+    pins: [], remarks: [], proposal: null, verdict: null,
   },
   'first-triple': {
     ask: 'I believe there is a third star between the two. Do you see it?',

@@ -91,7 +91,7 @@ export type CaptureKey = keyof typeof captures
 
 export interface RunPlan {
   key: string, owner: Person, target: string, capture: CaptureKey, recipe: RecipeKey
-  /** 1 is the first version. */
+  /** Which of the recipe's versions in this file, from 1; a fork has one more, its origin's, before them. */
   version: number
   note: string, replaces: string | null, fileRaw: boolean
 }

@@ -1,7 +1,7 @@
 /** The steps of the seeding, in order; each asks the server first what is there already. */
 import type { Club } from '../../shared/api/account'
 import { nightOf } from './dates'
-import { fileRun, findRun, type RunIdentity } from './filing'
+import { fileRun, findFiled, type RunIdentity } from './filing'
 import { ensureInstruments, ensureRecipes, ensureTargets, type Members } from './library'
 import { Member } from './member'
 import { createProgress } from './progress'
@@ -43,13 +43,11 @@ export async function seed(base: string, { share = 1 }: SeedOptions = {}): Promi
   for (const [index, plan] of runs.entries()) {
     const owner = members[plan.owner]
     const capture = captures[plan.capture]
-    const identity: RunIdentity = {
-      target: plan.target, night: nightOf(anchor, capture.nightsAgo), recipeName: recipes[plan.recipe].name, version: plan.version,
-      recipeVersionId: versions[plan.recipe][plan.version - 1]!.id,
-    }
+    const { id: recipeVersionId, version } = versions[plan.recipe][plan.version - 1]!
+    const identity: RunIdentity = { target: plan.target, night: nightOf(anchor, capture.nightsAgo), recipeName: recipes[plan.recipe].name, version, recipeVersionId }
     progress.step(`run ${index + 1} of ${runs.length}, ${plan.target}`)
     let worked: WorkedRun | null = null
-    let run = await findRun(owner, identity, 'filed')
+    let run = await findFiled(owner, identity)
     if (!run) {
       worked = await work(plan)
       run = await fileRun(owner, identity, worked, {
