@@ -11,6 +11,7 @@ import { createScorer, emptyScore, type Scorer } from '../score/scorer'
 import { addSum, fixedSum, makeRoom, type FixedSum } from '../stack/fixed'
 import type { ResampleKernel } from '../../shared/schemas/recipe'
 import { AverageSum } from './average'
+import { surveyFrames } from './survey-frames'
 import type { Batch, ComputeReply, ComputeRequest, GradeReply, JudgeSetup, ShiftReply } from './messages'
 
 type Of<Op extends ComputeRequest['op']> = Extract<ComputeRequest, { op: Op }>
@@ -47,6 +48,7 @@ export class Computer {
 
   #answer(request: ComputeRequest): ComputeReply {
     switch (request.op) {
+      case 'survey': return surveyFrames(request.facts, request.samples, request.recipe)
       case 'setup': return this.#begin(request.setup)
       case 'grade': return this.#grade(request)
       case 'register': return this.#register(request)

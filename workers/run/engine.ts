@@ -27,7 +27,8 @@ import { countSetAside, rankFrames, type Ranking } from './rank'
 import { firstReference, refinePass, type Refined, type RefineProgress } from './refine-pass'
 import { Stacker } from './stacker'
 import { Stages, type StageStore } from './store'
-import { luminanceImage, surveyPass, type Surveyed } from './survey-pass'
+import type { Surveyed } from './survey-frames'
+import { luminanceImage, surveyPass } from './survey-pass'
 
 export interface EngineOptions extends Omit<FrameStoreOptions, 'shared'> {
   pool: Pool

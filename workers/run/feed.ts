@@ -41,8 +41,7 @@ export class Feed {
 
   /** Waits for everything in flight; a cancel does not wait. */
   async drain(): Promise<void> {
-    const all = Promise.all(this.#flying.flatMap(set => [...set]))
-    await Promise.race([all, whenAborted(this.#signal)])
+    await unlessAborted(Promise.all(this.#flying.flatMap(set => [...set])), this.#signal)
     this.#check()
   }
 
@@ -58,11 +57,21 @@ export class Feed {
   }
 }
 
-function whenAborted(signal: AbortSignal): Promise<void> {
-  return new Promise((resolve) => {
-    if (signal.aborted) resolve()
-    else signal.addEventListener('abort', () => resolve(), { once: true })
+/** Resolves with the work, or rejects as soon as the signal fires; the work itself is not stopped. */
+export async function unlessAborted<T>(work: Promise<T>, signal: AbortSignal): Promise<T> {
+  signal.throwIfAborted()
+  let stop: () => void = () => undefined
+  const aborted = new Promise<never>((_resolve, reject) => {
+    stop = () => reject(signal.reason as Error)
+    signal.addEventListener('abort', stop, { once: true })
   })
+  work.catch(() => undefined)
+  try {
+    return await Promise.race([work, aborted])
+  }
+  finally {
+    signal.removeEventListener('abort', stop)
+  }
 }
 
 /** Frames per request for a frame of so many pixels. */

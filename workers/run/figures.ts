@@ -2,7 +2,7 @@ import type { Optics, StackImage } from '../api'
 import { halvesNoise, stackFigures, stackLuminance } from '../score/figures'
 import type { StackFigures } from '../../shared/schemas/run'
 import type { Stacker } from './stacker'
-import type { Surveyed } from './survey-pass'
+import type { Surveyed } from './survey-frames'
 
 /** Figures of stacks of one run; the noise comes from half stacks, so that nothing that was aligned to itself is counted as signal. */
 export class Figurer {

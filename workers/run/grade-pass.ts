@@ -6,7 +6,7 @@ import { Feed, pieceFrames, ship } from './feed'
 import type { GradeReply } from './messages'
 import { reasonCode } from './rank'
 import type { RegisterPlan } from '../register/types'
-import type { Surveyed } from './survey-pass'
+import type { Surveyed } from './survey-frames'
 
 export interface Graded {
   table: GradeTable

@@ -8,7 +8,7 @@ import { Feed } from './feed'
 import { picked, pieces } from './picked'
 import type { LadderKeeper } from './ladder-resume'
 import type { Ranking } from './rank'
-import type { Surveyed } from './survey-pass'
+import type { Surveyed } from './survey-frames'
 
 export interface Ladder {
   counts: number[]

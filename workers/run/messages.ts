@@ -6,7 +6,9 @@ import type { Samples } from '../decode/types'
 import type { PreparePlan } from '../prepare/types'
 import type { RegisterPlan } from '../register/types'
 import type { ScorePlan } from '../score/types'
-import type { ResampleKernel } from '../../shared/schemas/recipe'
+import type { CaptureFacts } from '../../shared/schemas/capture'
+import type { Recipe, ResampleKernel } from '../../shared/schemas/recipe'
+import type { Surveyed } from './survey-frames'
 
 /** Consecutive frames in one buffer: `count` × planes × height × width samples from sample `offset`. The buffer may be shared. */
 export interface Batch { first: number, count: number, samples: Samples, offset: number }
@@ -21,6 +23,7 @@ export interface Reference { luminance: Float32Array, x: number, y: number }
 type Picked = { batch: Batch, picks: Int32Array }
 
 export type ComputeRequest =
+  | { op: 'survey', facts: CaptureFacts, samples: Samples[], recipe: Recipe }
   | { op: 'setup', setup: JudgeSetup }
   | { op: 'grade', batch: Batch, register: boolean, averageScale: number }
   | ({ op: 'register', x: Float64Array, y: Float64Array } & Picked)
@@ -46,8 +49,9 @@ export interface ShiftReply { dx: Float64Array, dy: Float64Array, confidence: Fl
 export interface TakeReply { sums: (Int32Array | Float64Array)[] }
 
 export type ComputeReply<T extends ComputeRequest = ComputeRequest> =
-  T extends { op: 'grade' } ? GradeReply
-    : T extends { op: 'register' } ? ShiftReply
-      : T extends { op: 'take' } | { op: 'peek' } ? TakeReply
-        : T extends { op: 'take-average' } ? { sum: Float64Array }
-          : null
+  T extends { op: 'survey' } ? Surveyed
+    : T extends { op: 'grade' } ? GradeReply
+      : T extends { op: 'register' } ? ShiftReply
+        : T extends { op: 'take' } | { op: 'peek' } ? TakeReply
+          : T extends { op: 'take-average' } ? { sum: Float64Array }
+            : null

@@ -8,7 +8,7 @@ import type { GradeTable } from './columns'
 import { addFrame, makeAdder } from './computer'
 import type { PassContext } from './context'
 import type { FrameStore } from './frames'
-import type { Surveyed } from './survey-pass'
+import type { Surveyed } from './survey-frames'
 
 /** Frames in a growing preview at most. */
 const PREVIEW_FRAMES = 24

@@ -12,7 +12,7 @@ import { Feed } from './feed'
 import { picked, pieces } from './picked'
 import type { Reference } from './messages'
 import { rankFrames, reasonCode } from './rank'
-import type { Surveyed } from './survey-pass'
+import type { Surveyed } from './survey-frames'
 
 export interface Refined { shifts: ShiftTable, reference: Reference }
 
