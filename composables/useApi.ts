@@ -24,6 +24,13 @@ export function asApiFailure(error: unknown): ApiFailure {
   return new ApiFailure(message, status, details?.code ?? 'unknown', details?.field ?? null, details?.retryAfterSeconds ?? null)
 }
 
+/** To the sign-in page, and back to this one afterwards. */
+function signInAgain() {
+  useSessionStore().set(null)
+  const { fullPath, path } = useRouter().currentRoute.value
+  if (path !== '/sign-in') return navigateTo({ path: '/sign-in', query: { next: fullPath } })
+}
+
 type Send = (url: string, options?: FetchOptions) => Promise<unknown>
 
 /**
@@ -57,6 +64,10 @@ export async function usePageData<T>(key: () => string, load: (api: ReturnType<t
       return { value: null, failure: { message: failure.message, status: failure.status } }
     }
   }, { deep: true })
+  // The session has ended meanwhile: sign in, and come back here.
+  watch(result.data, (now) => {
+    if (import.meta.client && now?.failure?.status === 401) signInAgain()
+  }, { immediate: true })
   if (result.data.value?.failure?.status === 404) {
     throw createError({ statusCode: 404, message: result.data.value.failure.message, fatal: true })
   }

@@ -35,8 +35,8 @@ export function useSubmit() {
     }
   }
 
-  /** Text for one field, if the failure is about it. */
-  const errorOf = (name: string) => (field.value === name ? message.value ?? '' : '')
+  /** Text for one field, if the failure is about it; the field stands under its label, so its name is not said again. */
+  const errorOf = (name: string) => (field.value === name ? (message.value ?? '').replace(new RegExp(`^${name}:\\s*`), '') : '')
   /** Text for the form as a whole. */
   const general = computed(() => (field.value === null ? message.value : null))
   return { busy, message, field, code, retryAt, general, errorOf, submit, clear }
