@@ -38,7 +38,7 @@ export const targets: z.input<typeof targetBody>[] = [
 
 const pairs: Recipe = { ...defaultRecipe, score: { rankBy: 'peak', blurPx: 1 }, register: { ...defaultRecipe.register, windowPx: 64 } }
 const planets: Recipe = {
-  ...defaultRecipe, score: { rankBy: 'laplacian', blurPx: 2 }, register: { ...defaultRecipe.register, windowPx: 128, referenceFraction: 0.1 }, keep: { fraction: 0.5 },
+  ...defaultRecipe, score: { rankBy: 'transfer', blurPx: 1.5 }, register: { ...defaultRecipe.register, referenceFraction: 0.1 }, keep: { fraction: 0.5 },
 }
 
 /** Versions in order, each with what changed. A fork starts from the latest version of its origin. */
@@ -60,7 +60,7 @@ export const recipes = {
   },
   planets: {
     owner: 'ines', name: 'Banded planets, gently', shared: true, forkOf: null,
-    description: 'For a planet through a colour mosaic. Ranks by fine detail after a wide blur, so that grain does not choose the frames.',
+    description: 'For a planet through a colour mosaic. Ranks by how much of the reference’s detail a frame carries, so that grain does not choose the frames.',
     versions: [
       { recipe: planets, note: '' },
       { recipe: { ...planets, keep: { fraction: 0.2 }, restore: { scales: 2, gain: 1.8, thresholdSigma: 3 } }, note: 'Fewer frames and two scales restored, after the review of the first try.' },
