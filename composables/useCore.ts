@@ -28,7 +28,7 @@ class Bridge<Api extends Alive> {
   #stopped: Error | null = null
   #open = 0
   #timer: ReturnType<typeof setInterval> | null = null
-  #answeredAt = 0
+  #askedAt: number | null = null
 
   constructor(worker: Worker) {
     this.#worker = worker
@@ -64,13 +64,14 @@ class Bridge<Api extends Alive> {
     for (const fail of this.#fail.slice()) fail(reason)
   }
 
+  /** One question at a time; only an unanswered one counts, because timers of a hidden page fire late. */
   #watch(): void {
-    if (this.#timer) return
-    this.#answeredAt = performance.now()
-    this.#timer = setInterval(() => {
-      const api = this.api as unknown as Alive
-      void api.alive().then(() => { this.#answeredAt = performance.now() })
-      if (performance.now() - this.#answeredAt > GIVE_UP_AFTER) {
+    this.#timer ??= setInterval(() => {
+      if (this.#askedAt === null) {
+        this.#askedAt = performance.now()
+        void (this.api as unknown as Alive).alive().then(() => { this.#askedAt = null })
+      }
+      else if (performance.now() - this.#askedAt > GIVE_UP_AFTER) {
         this.stop(new CoreStopped('The capture could not be read: its decoder did not answer and was ended. Open another capture, or check this file.'))
       }
     }, ASK_EVERY)
@@ -79,6 +80,7 @@ class Bridge<Api extends Alive> {
   #unwatch(): void {
     if (this.#timer) clearInterval(this.#timer)
     this.#timer = null
+    this.#askedAt = null
   }
 }
 

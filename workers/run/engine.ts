@@ -7,6 +7,7 @@ import type { FrameReader } from '../decode/types'
 import { hasSimd } from '../kernels/index'
 import { makeRegisterPlan } from '../register/plan'
 import { restore } from '../restore/restore'
+import { canonicalJson } from '../../shared/recipe/canonical'
 import { rankingMeasure, type Recipe, type ScoreMeasure } from '../../shared/schemas/recipe'
 import type { Provenance, StackFigures } from '../../shared/schemas/run'
 import { engineName, lullVersion } from './version'
@@ -22,7 +23,7 @@ import { LadderKeeper } from './ladder-resume'
 import type { Pool } from './pool'
 import { growingPreview, shownAverage, singleFrame } from './preview'
 import { ProgressMeter } from './progress'
-import { proofs } from './proofs'
+import { proofs, repeatProofs, type Proof } from './proofs'
 import { countSetAside, rankFrames, type Ranking } from './rank'
 import { firstReference, refinePass, type Refined, type RefineProgress } from './refine-pass'
 import { Stacker } from './stacker'
@@ -50,7 +51,13 @@ export interface RunState {
   ladder: Ladder
   stacker: Stacker
   figurer: Figurer
+  optics: Optics | null
+  /** Null until they are complete. */
+  proofs: Proof[] | null
 }
+
+/** Bytes of a ladder that are kept beyond the page. */
+const MOST_LADDER_BYTES = 256 * 2 ** 20
 
 export class Engine {
   readonly reader: FrameReader
@@ -99,12 +106,15 @@ export class Engine {
     }))
     const same = this.#state?.ladder === ladder ? this.#state : null
     const stacker = same?.stacker ?? new Stacker(ladder, ranking.order, refined.shifts, this.frames, surveyed.plan)
-    const figurer = new Figurer(stacker, surveyed, optics)
-    this.#state = { recipe, measure: by, keys, surveyed, graded, refined, ranking, ladder, stacker, figurer }
+    const unchanged = same !== null && canonicalJson(same.optics) === canonicalJson(optics)
+    const figurer = unchanged ? same.figurer : new Figurer(stacker, surveyed, optics)
+    this.#state = { recipe, measure: by, optics, keys, surveyed, graded, refined, ranking, ladder, stacker, figurer, proofs: unchanged ? same.proofs : null }
     const { counts, width, height, planes } = ladder
     if (counts.length > 0) emit({ kind: 'ladder', ladder: { counts, width, height, planes } })
-    await this.#timed('proofs', () => proofs(this.#state!, this.averageShown(), context))
-    return this.#state
+    const state = this.#state
+    if (state.proofs) repeatProofs(state.proofs, emit)
+    else state.proofs = await this.#timed('proofs', () => proofs(state, this.averageShown(), context))
+    return state
   }
 
   /** The mean of exactly the best `count` frames (dragging: or of the nearest rung); restored as the last run's recipe says where asked. */
@@ -167,8 +177,16 @@ export class Engine {
     const stored = await this.#stages.load<T>(stage, key)
     const value = stored ?? await this.#timed(stage, compute)
     this.#results.set(stage, { key, value })
-    if (!stored) await this.#stages.save(stage, key, value)
+    if (!stored) await this.#keep(stage, key, value)
     return value
+  }
+
+  /** Saves a stage's result. A ladder is large: nobody waits for it, and one that is too large is added up again. */
+  async #keep(stage: Pass, key: string, value: unknown): Promise<void> {
+    if (stage !== 'ladder') return await this.#stages.save(stage, key, value)
+    const { sums, halves } = value as Ladder
+    const bytes = sums.reduce((sum, each) => sum + each.byteLength, 0) + halves.reduce((sum, each) => sum + each.byteLength, 0)
+    if (bytes <= MOST_LADDER_BYTES) void this.#stages.save(stage, key, value)
   }
 
   async #timed<T>(pass: Pass, work: () => Promise<T>): Promise<T> {

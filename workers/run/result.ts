@@ -11,15 +11,16 @@ export async function runResult(engine: Engine, recipe: Recipe, recipeHash: stri
   const { surveyed: { survey, score }, stacker, figurer, ladder, refined, graded } = state
   const count = keepCount(recipe.keep.fraction, stacker.ranked)
   const image = await stacker.stack(count)
+  const known = new Map(state.proofs?.map(proof => [proof.fraction, proof.figures]))
   const proofs = []
-  for (const fraction of proofFractions) proofs.push(figurer.of(await stacker.stack(keepCount(fraction, stacker.ranked))))
+  for (const fraction of proofFractions) proofs.push(known.get(fraction) ?? figurer.of(await stacker.stack(keepCount(fraction, stacker.ranked))))
   const { counts, width, height, planes } = ladder
   return {
     facts: engine.reader.facts, recipe, recipeHash, kind: survey.kind,
     chosen: { rankBy: state.measure, blurPx: score.blurPx, windowPx: score.windowPx, centre: score.centre },
     keep: { fraction: recipe.keep.fraction, count },
     ranked: stacker.ranked, setAside: countSetAside(refined.shifts.setAside),
-    figures: figurer.of(image), proofs, average: figurer.ofAverage(engine.averageShown(), graded.table.count),
+    figures: figurer.of(image), proofs, average: known.get('average') ?? figurer.ofAverage(engine.averageShown(), graded.table.count),
     ladder: { counts, width, height, planes },
     stretch: displayRange(image), provenance: engine.provenance(),
   }

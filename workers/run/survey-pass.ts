@@ -8,8 +8,9 @@ import type { Surveyed } from './survey-frames'
 
 /** Frames looked at, spread over the capture. */
 const SURVEY_FRAMES = 64
-/** Bytes that their luminance planes may take together. */
-const SURVEY_BYTES = 256 * 2 ** 20
+/** Pixels looked at in all, so that large frames do not keep the user waiting; at least a few frames all the same. */
+const SURVEY_PIXELS = 10e6
+const LEAST_FRAMES = 5
 
 /** Frame numbers spread evenly over `count` frames, ascending, each once. */
 export function spreadFrames(count: number, wanted: number): number[] {
@@ -21,7 +22,7 @@ export function spreadFrames(count: number, wanted: number): number[] {
 export async function surveyPass({ frames, pool, signal, progress }: PassContext, recipe: Recipe): Promise<Surveyed> {
   const { facts } = frames.reader
   const pixels = facts.width * facts.height
-  const numbers = spreadFrames(frames.count, Math.max(5, Math.min(SURVEY_FRAMES, Math.floor(SURVEY_BYTES / (pixels * 4)))))
+  const numbers = spreadFrames(frames.count, Math.max(LEAST_FRAMES, Math.min(SURVEY_FRAMES, Math.floor(SURVEY_PIXELS / pixels))))
   progress.begin('survey', 0, numbers.length)
   const samples: Samples[] = []
   for (const number of numbers) {

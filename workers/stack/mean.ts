@@ -17,13 +17,18 @@ export function meanOf(sum: Float64Array, counts: Int32Array, scale: number, pla
 
 /** Fills uncovered pixels in place; cheap when there are none. */
 export function fillUncovered(image: Float32Array, counts: Int32Array, width: number, height: number, planes: number): void {
-  if (counts.every(n => n > 0)) return
+  if (!hasUncovered(counts)) return
   const size = width * height
   for (let plane = 0; plane < planes; plane++) {
     const rowHas = new Uint8Array(height)
     for (let y = 0; y < height; y++) rowHas[y] = fillRow(image, counts, plane * size, y * width, width) ? 1 : 0
     fillRows(image, rowHas, plane * size, width, height)
   }
+}
+
+function hasUncovered(counts: Int32Array): boolean {
+  for (let i = 0; i < counts.length; i++) if (counts[i]! <= 0) return true
+  return false
 }
 
 function fillRow(image: Float32Array, counts: Int32Array, base: number, row: number, width: number): boolean {
