@@ -81,7 +81,7 @@ function air(spec: RehearsalSpec, apertureOverR0: number): RehearsalSpec['air'] 
 /** Sizes are chosen so that everything is simulated and worked through in well under a minute. */
 export const captures = {
   double1: { spec: { ...demoScenes.double, seed: 3101, frames: 900 }, file: 'tern-double-1.ser', observer: 'ines', nightsAgo: 16, startUtc: '20:41:07', instrument: 'dune' },
-  triple1: { spec: { ...demoScenes.triple, seed: 3202, frames: 1000 }, file: 'larch-triple-1.ser', observer: 'jorin', nightsAgo: 9, startUtc: '22:41:30', instrument: 'harbour' },
+  triple1: { spec: { ...demoScenes.triple, seed: 3202, frames: 1000, cloud: { atS: 9, widthS: 1.4, depth: 0.5 } }, file: 'larch-triple-1.ser', observer: 'jorin', nightsAgo: 9, startUtc: '22:41:30', instrument: 'harbour' },
   planet1: { spec: { ...demoScenes.planet, seed: 3303, frames: 240 }, file: 'saffron-planet-1.ser', observer: 'ines', nightsAgo: 7, startUtc: '23:12:44', instrument: 'orchard' },
   terrain1: { spec: { ...demoScenes.terrain, seed: 3404, frames: 200 }, file: 'quarry-patch-1.ser', observer: 'jorin', nightsAgo: 4, startUtc: '19:05:12', instrument: 'orchard' },
   double2: { spec: { ...demoScenes.double, seed: 3505, frames: 600, air: air(demoScenes.double, 5.6) }, file: 'tern-double-2.ser', observer: 'matthis', nightsAgo: 2, startUtc: '21:20:03', instrument: 'dune' },
@@ -101,7 +101,7 @@ export const runs: RunPlan[] = [
   { key: 'first-double', owner: 'ines', target: 'Tern double', capture: 'double1', recipe: 'pairs', version: 2, replaces: null, fileRaw: false,
     note: 'Steady for the first half, then gusts off the sea. Matthis’s recipe as it is.' },
   { key: 'first-triple', owner: 'jorin', target: 'Larch triple', capture: 'triple1', recipe: 'triples', version: 1, replaces: null, fileRaw: false,
-    note: 'A thin cloud went through at about sixteen seconds, and I nudged the mount once.' },
+    note: 'A thin cloud went through at about nine seconds, and I nudged the mount once.' },
   { key: 'first-planet', owner: 'ines', target: 'Saffron planet', capture: 'planet1', recipe: 'planets', version: 1, replaces: null, fileRaw: false,
     note: 'First light of the colour camera. Half of the frames, nothing restored.' },
   { key: 'patch', owner: 'jorin', target: 'Quarry patch', capture: 'terrain1', recipe: 'planets', version: 1, replaces: null, fileRaw: false,
