@@ -14,7 +14,8 @@ export function rungOf(counts: readonly number[], count: number): number {
 }
 
 export function useFiledRun(run: Ref<RunDetail>) {
-  const counts = ref<number[]>(run.value.result.ladder.counts.slice())
+  const { ladder, keep } = run.value.result
+  const counts = ref<number[]>([...new Set([...ladder.counts, keep.count])].sort((a, b) => a - b))
   const rung = ref(rungOf(counts.value, run.value.keep.count))
   const image = shallowRef<StackImage | null>(null)
   const average = shallowRef<StackImage | null>(null)
@@ -24,6 +25,7 @@ export function useFiledRun(run: Ref<RunDetail>) {
   let core: ReturnType<typeof useGuestCore> | null = null
   let busy = false
   let asked = -1
+  let opened = false
 
   const count = computed(() => counts.value[rung.value] ?? run.value.keep.count)
   const fraction = computed(() => count.value / Math.max(1, run.value.result.ranked))
@@ -59,10 +61,12 @@ export function useFiledRun(run: Ref<RunDetail>) {
     problem.value = null
     core = useGuestCore()
     try {
-      const answer = await core.open({ ladderUrl: ladder.url, ladderBytes: ladder.sizeBytes, framesUrl: frames.url, averageUrl: fileOf('average')?.url ?? null, result: toRaw(run.value.result) })
+      const answer = await core.open({ ladderUrl: ladder.url, ladderBytes: ladder.sizeBytes, framesUrl: frames.url, averageUrl: fileOf('average')?.url ?? null, stackUrl: fileOf('stack')?.url ?? null, result: toRaw(run.value.result) })
+      const wanted = opened ? count.value : run.value.keep.count
+      opened = true
       counts.value = answer.counts
       columns.value = answer.columns
-      rung.value = Math.min(rung.value, answer.counts.length - 1)
+      rung.value = rungOf(answer.counts, wanted)
       await follow()
     }
     catch (error) {

@@ -55,3 +55,6 @@ export function formatLocal(iso: string): string {
 export function formatWait(seconds: number): string {
   return seconds < 100 ? formatPlural(Math.max(1, Math.ceil(seconds)), 'second') : formatPlural(Math.ceil(seconds / 60), 'minute')
 }
+
+/** A number and its unit on one line: "2.0 ×" with a space that does not break. */
+export const keepTogether = (text: string) => text.replace(/(\d) /g, '$1\u00a0')

@@ -28,11 +28,19 @@ export function figureText(value: number | null): string {
   return value.toPrecision(4)
 }
 
-/** Figures of one column with the same number of decimals, so that they align: three figures for the middle one. */
-export function columnText(values: readonly (number | null)[]): string[] {
+/**
+ * Figures of one column with the same number of decimals, so that they align: three figures for the middle
+ * one. Very small figures share a power of ten, which belongs into the column's head ("10⁻⁶", else "").
+ */
+export function columnText(values: readonly (number | null)[]): { texts: string[], power: string } {
   const sizes = values.filter((value): value is number => value !== null && Number.isFinite(value) && value !== 0).map(Math.abs).sort((a, b) => a - b)
   const middle = sizes[Math.floor(sizes.length / 2)] ?? 1
-  const decimals = Math.max(0, Math.min(8, 2 - Math.floor(Math.log10(middle))))
+  const power = middle < 1e-3 ? 3 * Math.floor(Math.log10(middle) / 3) : 0
+  const decimals = Math.max(0, 2 - Math.floor(Math.log10(middle / 10 ** power)))
   const format = new Intl.NumberFormat('en-GB', { minimumFractionDigits: decimals, maximumFractionDigits: decimals })
-  return values.map(value => (value === null || !Number.isFinite(value) ? '–' : format.format(value)))
+  const superscript = (digits: string) => [...digits].map(digit => (digit === '-' ? '⁻' : '⁰¹²³⁴⁵⁶⁷⁸⁹'[Number(digit)])).join('')
+  return {
+    texts: values.map(value => (value === null || !Number.isFinite(value) ? '–' : format.format(value / 10 ** power))),
+    power: power === 0 ? '' : `10${superscript(String(power))}`,
+  }
 }

@@ -1,5 +1,6 @@
 /** Stacks as pictures: the same formula as the filed 8-bit view, and only the red channel in the red theme. */
 import type { StackImage } from '~~/workers/api'
+import type { MosaicPattern } from '~~/shared/schemas/capture'
 import type { DisplayStretch } from '~~/shared/schemas/run'
 
 /** Rec. 709 weights, as in the filter of app.vue. */
@@ -47,6 +48,26 @@ export function paintStack(image: StackImage, stretch: DisplayStretch, redOnly: 
   canvas.height = image.height
   canvas.getContext('2d')!.putImageData(stackPixels(image, stretch, redOnly), 0, 0)
   return canvas
+}
+
+/** A mosaic as a colour picture of half the size, for looking at: each cell of four is one pixel, its two greens averaged. */
+export function mosaicCells(image: StackImage, pattern: MosaicPattern): StackImage {
+  if (pattern === 'none' || image.planes !== 1) return image
+  const width = image.width >> 1
+  const height = image.height >> 1
+  const area = width * height
+  const samples = new Float32Array(area * 3)
+  const planeOf = { R: 0, G: 1, B: 2 } as const
+  for (let y = 0; y < height; y++) {
+    for (let x = 0; x < width; x++) {
+      for (let cell = 0; cell < 4; cell++) {
+        const plane = planeOf[pattern[cell] as 'R' | 'G' | 'B']
+        const value = image.samples[(2 * y + (cell >> 1)) * image.width + 2 * x + (cell & 1)]!
+        samples[plane * area + y * width + x]! += plane === 1 ? value / 2 : value
+      }
+    }
+  }
+  return { ...image, width, height, planes: 3, samples }
 }
 
 /** Colours of the theme as they stand now, for what is drawn on a canvas. */

@@ -102,11 +102,15 @@ export interface CoreApi {
 }
 
 /** A filed run to look at without its capture: the ladder file by HTTP ranges and the frame table. */
-export interface FiledRun { ladderUrl: string, ladderBytes: number, framesUrl: string, averageUrl: string | null, result: RunResult }
+export interface FiledRun {
+  ladderUrl: string, ladderBytes: number, framesUrl: string, averageUrl: string | null, result: RunResult
+  /** The filed stack; with it the filed count is a stop of the slider even where the ladder has no such rung. */
+  stackUrl?: string | null
+}
 
 /** What a guest's bench asks; implemented by workers/guest.worker.ts. Counts snap to rungs, so that the count shown is what is in the image. */
 export interface GuestApi {
-  /** The rungs' counts, ascending, and the frame table. */
+  /** The counts that can be shown (the rungs, and the filed one), ascending, and the frame table. */
   open(run: FiledRun): Promise<{ counts: number[], columns: FrameColumns }>
   /** The stack of the rung nearest to `count`; its `count` says which. */
   stack(count: number, restored: boolean): Promise<StackImage>

@@ -64,6 +64,21 @@ describe('a filed run without its capture', () => {
     await expect(guest.stack(9, false)).rejects.toThrow('No run is open')
   })
 
+  it('shows exactly the filed stack where the ladder has no such rung', async () => {
+    const { counts } = filed.result.ladder
+    const between = Array.from({ length: counts.at(-1)! }, (_, k) => k + 1).find(count => !counts.includes(count))!
+    expect(between).toBeGreaterThan(1)
+    const context = { recipe, stretch: { black: 0, white: 1, gamma: 1 }, fraction: between / counts.at(-1)!, targetName: 'A pair', observer: '', recipeName: null }
+    const [stack] = await exportFiles(engine, ['stack-fits'], context)
+    const stackUrl = `data:application/fits;base64,${Buffer.from(stack!.bytes).toString('base64')}`
+    const guest = new GuestRun()
+    const keep = { fraction: context.fraction, count: between }
+    const opened = await guest.open({ ...filed, stackUrl, result: { ...filed.result, keep } })
+    expect(opened.counts).toContain(between)
+    expect(await guest.stack(between, false)).toEqual(await engine.stack(between, false))
+    expect((await guest.stack(counts[0]!, false)).count).toBe(counts[0])
+  })
+
   it('snaps to the nearest rung and says which', async () => {
     const guest = new GuestRun()
     const sparse = { ...filed, result: { ...filed.result, ladder: { ...filed.result.ladder, counts: filed.result.ladder.counts } } }

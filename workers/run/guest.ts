@@ -19,6 +19,8 @@ export class GuestRun implements GuestApi {
   #run: FiledRun | null = null
   #source: ByteSource | null = null
   #layout: CubeLayout | null = null
+  /** Counts that can be shown, ascending: the rungs, and the filed stack's own. */
+  #counts: number[] = []
   #planes = new Map<number, Promise<Float32Array>>()
 
   async open(run: FiledRun): Promise<{ counts: number[], columns: FrameColumns }> {
@@ -32,15 +34,17 @@ export class GuestRun implements GuestApi {
     const { ladder } = run.result
     if (layout.count !== ladder.counts.length || layout.width !== ladder.width || layout.height !== ladder.height || layout.planes !== ladder.planes) throw new Error(notTheLadder)
     this.#layout = layout
-    return { counts: run.result.ladder.counts.slice(), columns: columnsFromCsv(table) }
+    const filed = run.result.keep.count
+    this.#counts = run.stackUrl && filed > 0 && !ladder.counts.includes(filed) ? [...ladder.counts, filed].sort((a, b) => a - b) : ladder.counts.slice()
+    return { counts: this.#counts.slice(), columns: columnsFromCsv(table) }
   }
 
   async stack(count: number, restored: boolean): Promise<StackImage> {
     const { result } = this.#need()
-    const { counts, width, height, planes } = result.ladder
-    const rung = nearestRung(counts, count)
-    const samples = await this.#plane(rung)
-    const image: StackImage = { width, height, planes, samples: samples.slice(), count: counts[rung]!, restored: false }
+    const { width, height, planes } = result.ladder
+    const shown = this.#counts[nearestRung(this.#counts, count)]!
+    const samples = await this.#plane(shown)
+    const image: StackImage = { width, height, planes, samples: samples.slice(), count: shown, restored: false }
     if (!restored || result.recipe.restore.scales === 0) return image
     const done = restore(image.samples, width, height, planes, result.recipe.restore)
     return { ...image, samples: done.samples, restored: true, overshoot: done.overshoot }
@@ -77,20 +81,33 @@ export class GuestRun implements GuestApi {
 
   alive(): Promise<boolean> { return Promise.resolve(true) }
 
-  #plane(rung: number): Promise<Float32Array> {
-    const kept = this.#planes.get(rung)
-    this.#planes.delete(rung)
-    const plane = kept ?? this.#read(rung)
-    this.#planes.set(rung, plane)
-    plane.catch(() => this.#planes.delete(rung))
+  #plane(count: number): Promise<Float32Array> {
+    const kept = this.#planes.get(count)
+    this.#planes.delete(count)
+    const plane = kept ?? this.#read(count)
+    this.#planes.set(count, plane)
+    plane.catch(() => this.#planes.delete(count))
     if (this.#planes.size > KEPT) this.#planes.delete(this.#planes.keys().next().value!)
     return plane
   }
 
-  /** One rung by one range of the file. */
-  async #read(rung: number): Promise<Float32Array> {
+  /** One rung by one range of the file, or the filed stack by its own. */
+  async #read(count: number): Promise<Float32Array> {
+    const rung = this.#need().result.ladder.counts.indexOf(count)
+    if (rung < 0) return this.#readFiledStack()
     const { dataOffset, frameBytes } = this.#layout!
     return decodeCubeFrame(await this.#source!.read(dataOffset + rung * frameBytes, frameBytes), this.#layout!)
+  }
+
+  async #readFiledStack(): Promise<Float32Array> {
+    const { stackUrl, result: { ladder } } = this.#need()
+    const answer = await fetch(stackUrl!, { credentials: 'same-origin' })
+    if (!answer.ok) throw new Error(`The filed stack could not be read (${answer.status}). Load the page again.`)
+    const bytes = new Uint8Array(await answer.arrayBuffer())
+    const layout = cubeLayout(bytes)
+    // A file of one stack: its planes, for colour, count as frames of a mono cube.
+    if (!layout || layout.width !== ladder.width || layout.height !== ladder.height || layout.count * layout.planes !== ladder.planes) throw new Error('The filed stack has another size than its ladder. Tell the owner of the run.')
+    return decodeCubeFrame(bytes.subarray(layout.dataOffset), { ...layout, planes: ladder.planes, count: 1 })
   }
 
   #need(): FiledRun {
