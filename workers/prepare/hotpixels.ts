@@ -106,7 +106,7 @@ function findInPlane(frames: Samples[], offset: number, width: number, height: n
       const side = e > 0 ? low : high
       const sideExcess = inner(x, y) ? side[i]! - ringMedian(side, i, step, step * width) : side[i]! - edgeMedian(side, x, y, width, height, step)
       if (sideExcess * Math.sign(e) < 0.4 * Math.abs(e)) continue
-      if (e > 0 && couldBeStar(middle, x, y, width, height, step, level, least)) continue
+      if (e > 0 && couldBeStar(middle, x, y, width, height, step, level, Math.max(SIGMAS * floor, 4 * quantum))) continue
       found.push(offset + i)
     }
   }
@@ -150,6 +150,8 @@ function couldBeStar(image: Float32Array, x: number, y: number, width: number, h
   const edge = Math.min(...edges)
   const corner = Math.min(...corners)
   if (edge <= 0.5 * least) return false
+  // Beside something twice as bright: its flank.
+  if (Math.max(...edges, ...corners) > 2 * core) return true
   if (corner <= 0.25 * least) return core < 5 * (edges[0]! + edges[1]! + edges[2]! + edges[3]!) / 4
   const logOf = (values: number[]) => values.reduce((sum, v) => sum + Math.log(v), 0) / values.length
   const predicted = Math.exp(2 * logOf(edges) - logOf(corners))

@@ -27,6 +27,8 @@ const CLEAR = 0.5
 const NEAR = 0.5
 /** A second candidate of step 1 as strong as this makes a frame unsure. */
 const RUNNER_UP = 0.95
+/** A window farther than this from where it belongs is cut out again, px. */
+const AT_HOME = 1
 const LEAST_SIGNIFICANCE = 5
 /** Expected mean square of an optical transfer function in short exposures: weighs noise in the deconvolution. */
 const TRANSFER_POWER = 0.1
@@ -70,7 +72,6 @@ export function extendedRegistrar(plan: RegisterPlan): Registrar {
   }
   const floor = 1e-3 * mean / weights + plan.noise * plan.noise * n * n / TRANSFER_POWER
   let broadPower = 0
-  let own = 0
   for (let kx = 0, o = 0; kx <= cut; kx++) {
     const both = kx === 0 ? 1 : 2
     for (let ky = -cut; ky <= cut; ky++, o += 2) {
@@ -85,9 +86,12 @@ export function extendedRegistrar(plan: RegisterPlan): Registrar {
       sharp[o] = re * s
       sharp[o + 1] = -im * s
       broadPower += both * power * b * b
-      own += both * power * s
     }
   }
+  // What the reference gives with itself.
+  multiply(spectrum, sharp, product)
+  let own = 0
+  for (let kx = 0, o = 0; kx <= cut; kx++) for (let ky = -cut; ky <= cut; ky++, o += 2) own += (kx === 0 ? 1 : 2) * product[o]!
   own /= n * n
   const noiseLevel = plan.noise * Math.sqrt(broadPower) / n
   const radius = n / 2 - Math.max(4, n / 16)
@@ -97,13 +101,18 @@ export function extendedRegistrar(plan: RegisterPlan): Registrar {
 
   return {
     register(luminance, expectedX, expectedY, out) {
-      const x0 = Math.round(expectedX) - n / 2
-      const y0 = Math.round(expectedY) - n / 2
-      load(luminance, x0, y0, window)
-      forward.forward(window, spectrum)
-      multiply(spectrum, broad, product)
-      inverse.inverse(product, map)
-      highest(map, side, step, 0, 0, radius, first)
+      let x0 = Math.round(expectedX) - n / 2
+      let y0 = Math.round(expectedY) - n / 2
+      for (let pass = 0; pass < 2; pass++) {
+        load(luminance, x0, y0, window)
+        forward.forward(window, spectrum)
+        multiply(spectrum, broad, product)
+        inverse.inverse(product, map)
+        highest(map, side, step, 0, 0, radius, first)
+        if (pass > 0 || (Math.abs(first.x) < AT_HOME && Math.abs(first.y) < AT_HOME)) break
+        x0 += Math.round(first.x)
+        y0 += Math.round(first.y)
+      }
       const runnerUp = secondHighest(map, side, step, first.x, first.y, 8, radius)
       refine(product, step, first)
       const ratio = first.value > 0 ? Math.max(0, runnerUp) / first.value : 1

@@ -12,56 +12,68 @@ export interface ShiftTable {
   sure: ArrayLike<number>
 }
 
-/** How far, in robust deviations of the neighbours' scatter, a shift may lie from its neighbours in time. */
+/** How far, in robust deviations, a shift may lie from what its neighbours lead to. */
 const SIGMAS = 6
-/** Frames on each side that count as neighbours. */
+/** Sure frames on each side that are asked, and how far away they may be. */
 const REACH = 7
+const FARTHEST = 30
 
 /**
  * Marks shifts that jump out of the drift: 1 where the frame should be set aside as "unsure".
  *
- * The middle of the neighbours' shifts (median over ±7 sure frames) follows any drift; the scatter about it is what
- * the air does. A shift farther out than both 6 robust deviations and `leastPx` is a wrong lock, unless
- * its own confidence is high: a real jump (a knocked telescope) is seen by every frame after it, and its neighbours' median
- * moves along.
+ * The sure frames before a frame lead to a place for it, and so do those after it (straight line by medians of
+ * pairwise slopes: Theil 1950, Sen 1968); drift of any speed is followed, at both ends as well. A frame that fits
+ * either side is kept: a bump against the telescope is a step that everything after it shares. A frame that fits
+ * neither, by more than both 6 robust deviations of what the air does and `leastPx`, is a wrong lock.
  */
 export function settleShifts(table: ShiftTable, leastPx: number): Uint8Array {
   const count = table.dx.length
-  const unsure = new Uint8Array(count)
-  const offX = new Float64Array(count).fill(NaN)
-  const offY = new Float64Array(count).fill(NaN)
-  const near: number[] = []
-  const middle = (values: ArrayLike<number>, at: number): number => {
-    near.length = 0
-    for (let j = Math.max(0, at - REACH); j <= Math.min(count - 1, at + REACH); j++) {
-      if (j !== at && table.sure[j] && Number.isFinite(values[j]!)) near.push(values[j]!)
-    }
-    if (near.length < 3) return NaN
-    near.sort((a, b) => a - b)
-    const n = near.length
-    return 0.5 * (near[(n - 1) >> 1]! + near[n >> 1]!)
-  }
-  const scatterX: number[] = []
-  const scatterY: number[] = []
+  const usable = Uint8Array.from({ length: count }, (_, i) => (table.sure[i] && Number.isFinite(table.dx[i]!) && Number.isFinite(table.dy[i]!) ? 1 : 0))
+  const off = { x: new Float64Array(count).fill(NaN), y: new Float64Array(count).fill(NaN) }
   for (let i = 0; i < count; i++) {
-    if (!table.sure[i] || !Number.isFinite(table.dx[i]!)) { unsure[i] = 1; continue }
-    offX[i] = table.dx[i]! - middle(table.dx, i)
-    offY[i] = table.dy[i]! - middle(table.dy, i)
-    if (Number.isFinite(offX[i]!)) {
-      scatterX.push(Math.abs(offX[i]!))
-      scatterY.push(Math.abs(offY[i]!))
-    }
+    if (!usable[i]) continue
+    off.x[i] = nearest(table.dx, usable, i)
+    off.y[i] = nearest(table.dy, usable, i)
   }
-  const mad = (values: number[]): number => {
-    if (values.length === 0) return 0
-    values.sort((a, b) => a - b)
-    return 1.4826 * values[values.length >> 1]!
+  const limitX = Math.max(leastPx, SIGMAS * deviation(off.x))
+  const limitY = Math.max(leastPx, SIGMAS * deviation(off.y))
+  return Uint8Array.from({ length: count }, (_, i) => (!usable[i] || off.x[i]! > limitX || off.y[i]! > limitY ? 1 : 0))
+}
+
+/** Distance of a value from the nearer of what the frames before and after lead to; NaN without neighbours. */
+function nearest(values: ArrayLike<number>, usable: Uint8Array, at: number): number {
+  const before = Math.abs(values[at]! - led(values, usable, at, -1))
+  const after = Math.abs(values[at]! - led(values, usable, at, 1))
+  return Number.isNaN(before) ? after : Number.isNaN(after) ? before : Math.min(before, after)
+}
+
+const places: number[] = []
+const numbers: number[] = []
+function led(values: ArrayLike<number>, usable: Uint8Array, at: number, direction: -1 | 1): number {
+  places.length = 0
+  for (let k = 1; k <= FARTHEST && places.length < REACH; k++) {
+    const j = at + direction * k
+    if (j < 0 || j >= usable.length) break
+    if (usable[j]) places.push(j)
   }
-  const limitX = Math.max(leastPx, SIGMAS * mad(scatterX))
-  const limitY = Math.max(leastPx, SIGMAS * mad(scatterY))
-  for (let i = 0; i < count; i++) {
-    if (unsure[i] || !Number.isFinite(offX[i]!)) continue
-    if (Math.abs(offX[i]!) > limitX || Math.abs(offY[i]!) > limitY) unsure[i] = 1
+  if (places.length < 3) return NaN
+  numbers.length = 0
+  for (let a = 0; a < places.length; a++) {
+    for (let b = a + 1; b < places.length; b++) numbers.push((values[places[b]!]! - values[places[a]!]!) / (places[b]! - places[a]!))
   }
-  return unsure
+  const slope = middle(numbers)
+  numbers.length = 0
+  for (const j of places) numbers.push(values[j]! - slope * (j - at))
+  return middle(numbers)
+}
+
+function middle(list: number[]): number {
+  list.sort((a, b) => a - b)
+  const n = list.length
+  return 0.5 * (list[(n - 1) >> 1]! + list[n >> 1]!)
+}
+
+function deviation(values: Float64Array): number {
+  const known = [...values].filter(Number.isFinite)
+  return known.length > 0 ? 1.4826 * middle(known) : 0
 }

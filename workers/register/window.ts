@@ -4,7 +4,12 @@ import type { TargetForm } from '../score/types'
 
 export interface WindowShape { width: number, height: number, windowPx: number, form: TargetForm }
 
-/** Cuts a window out of a frame, less its border level (stars) or its mean (extended), and tapers it. */
+/**
+ * Cuts a window out of a frame, less its border level (stars) or its mean (extended), and tapers it.
+ *
+ * The tapers of frame and reference correlate as well, at zero shift, and pull every shift toward it (by 8 % on structure
+ * of 6 px in a window of 64): a window must lie within half a pixel of where it belongs before its shift is final.
+ */
 export function createLoader(plan: WindowShape): (frame: Float32Array, x0: number, y0: number, out: Float32Array) => void {
   const { width, height, windowPx: n, form } = plan
   const weights = new Map<number, Float64Array>()

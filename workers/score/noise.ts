@@ -17,23 +17,31 @@ export function frameNoise(frame: Float32Array, width: number, height: number, l
   let m = 0
   for (let i = lag; i + lag < width * height; i += every) {
     const x = i % width
-    if (x < lag || x + lag >= width || frame[i]! > middle) continue
+    // The brightness is judged two rows below: a sample chosen for being low would have the noise of low samples.
+    if (x < lag || x + lag >= width || frame[i + 2 * width < width * height ? i + 2 * width : i - 2 * width]! > middle) continue
     // A slope cancels in the second difference; its variance is 6 sigma².
     differences[m++] = Math.abs(frame[i - lag]! - 2 * frame[i]! + frame[i + lag]!)
   }
-  // Whole-number samples make ties at a low noise: the mean of the lower nine tenths is steadier than the median,
-  // and rounding alone is worth 1/√12 of a unit.
   const most = quantileInPlace(differences, m, 0.9)
+  if (m === 0) return 1e-6
+  if (whole(levels, n) && most <= 6) return Math.max(0.2887, coarse(differences, m, most))
   let sum = 0
   let count = 0
   for (let k = 0; k < m; k++) {
     if (differences[k]! <= most) { sum += differences[k]!; count++ }
   }
-  // Below its 90 % value the mean of |Gaussian| is 0.6573 sigma; ties at the limit raise it toward 0.798.
-  const share = count / Math.max(1, m)
-  const meanOf = 0.6573 + (0.7979 - 0.6573) * Math.min(1, Math.max(0, (share - 0.9) / 0.1))
-  const rounding = whole(levels, n) ? 0.2887 : 1e-6
-  return Math.max(rounding, m > 0 ? sum / Math.max(1, count) / meanOf / Math.sqrt(6) : 0)
+  // Below its 90 % value the mean of |Gaussian| is 0.6573 sigma.
+  return Math.max(1e-6, sum / count / 0.6573 / Math.sqrt(6))
+}
+
+/** A few units of noise on whole numbers: too many ties for quantiles, so the mean square up to what noise reaches. Rounding alone is 1/√12. */
+function coarse(differences: Float32Array, m: number, most: number): number {
+  let squares = 0
+  let count = 0
+  for (let k = 0; k < m; k++) {
+    if (differences[k]! <= 2 * most + 1) { squares += differences[k]! * differences[k]!; count++ }
+  }
+  return Math.sqrt(squares / count / 6)
 }
 
 function whole(values: Float32Array, n: number): boolean {

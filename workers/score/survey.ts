@@ -98,14 +98,14 @@ function powerAtLeast(value: number): number {
   return n
 }
 
-/** Largest power of two that fits (nearly) into the frame, at most 256. */
+/** Largest power of two that (nearly) fits into the frame, 32 to 256. */
 function fieldWindow(width: number, height: number): number {
   let n = 32
   while (2 * n <= 1.1 * Math.min(width, height) && n < 256) n *= 2
   return n
 }
 
-/** Twice the diameter that holds 80 % of a star's light, or 1.3 times a disc, as a power of two. */
+/** Twice the diameter of a star's image down to a sixteenth of its block maximum, or 1.25 times a disc, as a power of two. */
 function compactWindow(frames: Float32Array[], width: number, height: number, form: TargetForm): number {
   const blocks = createBlocks(width, height)
   const { columns, rows, means, side } = blocks
@@ -117,7 +117,7 @@ function compactWindow(frames: Float32Array[], width: number, height: number, fo
     const background = quantileInPlace(sorted, sorted.length, 0.3)
     let top = -Infinity
     for (const v of means) if (v > top) top = v
-    const threshold = background + 0.1 * (top - background)
+    const threshold = background + 0.06 * (top - background)
     let count = 0
     let sx = 0
     let sy = 0
@@ -138,7 +138,7 @@ function compactWindow(frames: Float32Array[], width: number, height: number, fo
     spans.push(side * Math.sqrt(8 * second / Math.max(1, count)))
   }
   const span = median(spans)
-  return powerAtLeast((form === 'star' ? 1.6 : 1.25) * span)
+  return form === 'star' ? Math.min(powerAtLeast(2 * span), fieldWindow(width, height)) : powerAtLeast(1.25 * span)
 }
 
 /** Width of the sharpest detail of a star: from the curvature of the brightest speckle in the sharpest frames. */
