@@ -7,7 +7,7 @@ const never = (files, groups, why) => ({
 })
 
 export default withNuxt(
-  { ignores: ['.data/**', '.cache/**', '.output/**', 'test-results/**', 'workers/kernels/assembly/**'] },
+  { ignores: ['.data/**', '.data-test/**', '.cache/**', '.output/**', 'test-results/**', 'workers/kernels/assembly/**'] },
   never(['workers/**/*.ts'], ['vue', 'pinia', '#app', '#imports', '**/components/**', '**/stores/**', '**/composables/**', '**/server/**', 'node:*'],
     'The imaging core knows no Vue, no Nuxt, no server and no Node.'),
   never(['shared/**/*.ts'], ['vue', 'pinia', '#app', '#imports', '**/workers/**', '**/components/**', '**/server/**', 'node:*'],

@@ -10,6 +10,12 @@ const isolation = {
   'Cross-Origin-Resource-Policy': 'same-origin',
 }
 
+/**
+ * For everything but pages, which get a policy with a nonce (server/plugins/2.policy.ts). It is also the policy that
+ * workers run under: they may compile WebAssembly and fetch from here, and nothing else.
+ */
+const staticPolicy = 'default-src \'none\'; script-src \'self\' \'wasm-unsafe-eval\'; worker-src \'self\'; connect-src \'self\'; img-src \'self\' data:; style-src \'unsafe-inline\'; object-src \'none\'; base-uri \'none\'; frame-ancestors \'none\''
+
 export default defineNuxtConfig({
   modules: ['@pinia/nuxt', '@nuxtjs/tailwindcss', 'nuxt-auth-utils', '@nuxt/eslint'],
   components: [{ path: '~/components', pathPrefix: false }],
@@ -36,8 +42,15 @@ export default defineNuxtConfig({
   },
   srcDir: '.',
   serverDir: 'server',
-  ignore: ['.data/**', '.cache/**', 'migrations/**', 'tests/**', 'scripts/**'],
-  routeRules: { '/**': { headers: isolation } },
+  ignore: ['.data/**', '.data-test/**', '.cache/**', 'migrations/**', 'tests/**', 'scripts/**'],
+  routeRules: {
+    '/**': { headers: isolation },
+    '/_nuxt/**': { headers: { 'Content-Security-Policy': staticPolicy } },
+    '/api/**': { headers: { 'Content-Security-Policy': staticPolicy } },
+    '/files/**': { headers: { 'Content-Security-Policy': staticPolicy } },
+    '/s/**': { headers: { 'Referrer-Policy': 'no-referrer', 'Cache-Control': 'no-store', 'X-Robots-Tag': 'noindex' } },
+  },
+  auth: { loadStrategy: 'none' },
   compatibilityDate: '2025-07-15',
   vite: {
     server: { headers: isolation },

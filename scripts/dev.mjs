@@ -2,21 +2,21 @@
 /** `npm run dev`: the same database and settings as start, with Nuxt's development server. */
 import { spawn } from 'node:child_process'
 import path from 'node:path'
+import { follow } from './lib/children.mjs'
+import { endEverything, fail, prepare } from './lib/serve.mjs'
+import { callable } from './lib/server.mjs'
 import { root, say } from './lib/system.mjs'
-import { endChild, endCleanly, fail, prepare } from './lib/serve.mjs'
 
 try {
-  const parts = []
-  const end = endCleanly(parts)
-  const context = await prepare()
-  parts.push(context.database.stop)
-  say(`Development server at ${context.url}`)
-  const child = spawn(process.execPath, [path.join(root, 'node_modules', 'nuxt', 'bin', 'nuxt.mjs'), 'dev', '--host', context.host, '--port', String(context.port)], {
-    cwd: root, stdio: 'inherit', env: { ...process.env, ...context.env },
-  })
-  parts.unshift(() => endChild(child))
-  child.once('exit', code => void end(code ?? 1))
+  const context = await prepare('npm run dev')
+  const url = `http://${callable(context.host)}:${context.port}`
+  say(`Development server at ${url}. The demo's runs come with: LULL_BASE_URL=${url} DATABASE_URL=${context.database.url} npx tsx scripts/seed/index.ts`)
+  context.lock.note({ url })
+  const child = follow(spawn(process.execPath, [path.join(root, 'node_modules', 'nuxt', 'bin', 'nuxt.mjs'), 'dev', '--host', context.host, '--port', String(context.port)], {
+    cwd: root, stdio: ['ignore', 'inherit', 'inherit'], env: { ...process.env, ...context.env }, detached: true,
+  }))
+  child.once('exit', code => void endEverything(code ?? 1))
 }
 catch (error) {
-  fail(error)
+  await fail(error)
 }

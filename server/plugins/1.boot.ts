@@ -1,5 +1,5 @@
 /** At boot: settings checked, tables brought up to date, the demo's people made, mail delivered; at the end: all closed. */
-import { prepareDemo } from '../utils/accounts/demo'
+import { prepareFirstClub } from '../utils/accounts/demo'
 import { closeDb, useDb } from '../utils/db'
 import { startLocalSmtp } from '../utils/local-smtp'
 import { deliverMails } from '../utils/mail'
@@ -15,7 +15,7 @@ export default defineNitroPlugin((nitro) => {
   let closeSmtp: (() => Promise<void>) | undefined
   const ready = (async () => {
     await migrate(useDb())
-    await prepareDemo(useDb())
+    await prepareFirstClub(useDb())
     closeSmtp = await startLocalSmtp()
     timer = setInterval(() => void deliverMails(), 30_000)
     await deliverMails()

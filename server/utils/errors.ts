@@ -15,6 +15,7 @@ export const texts = {
   emailTaken: 'There is an account with this e-mail address already. Sign in, or ask for a new password.',
   wrongPassword: 'The current password is not right.',
   lastOrganiser: 'A club needs an organiser: make somebody else organiser first.',
+  unwell: 'The database does not answer at the moment. Nothing was changed; try again in a minute.',
   server: 'Something went wrong on the server. Nothing was changed; try again in a moment.',
 } as const
 
@@ -34,6 +35,16 @@ export function asProblem(error: unknown): H3Error {
   }
   if (isError(error) && !error.unhandled && error.statusCode < 500) return error
   if (isError(error) && error.statusCode === 503) return error
+  if (isUnreachable(error)) {
+    console.error('The database does not answer:', (error as Error).message)
+    return problem(503, 'unwell', texts.unwell)
+  }
   console.error(error)
   return problem(500, 'server', texts.server)
+}
+
+/** Errors of the driver and the pool that say that the database is away, and nothing about the request. */
+function isUnreachable(error: unknown): boolean {
+  const { name, code } = error as { name?: string, code?: string }
+  return name === 'KnexTimeoutError' || ['ECONNREFUSED', 'ECONNRESET', 'EPIPE', 'ETIMEDOUT', 'PROTOCOL_CONNECTION_LOST', 'ER_SERVER_SHUTDOWN', 'ER_CON_COUNT_ERROR'].includes(code ?? '')
 }

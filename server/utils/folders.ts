@@ -10,3 +10,5 @@ export const uploadsFolder = () => path.join(dataDir(), 'uploads')
 export const refusedFolder = () => path.join(dataDir(), 'refused')
 /** Mails that the demo's own SMTP server took. */
 export const mailFolder = () => path.join(dataDir(), 'mail')
+/** How the first organiser of an empty club comes in; for the operator. */
+export const firstInvitationFile = () => path.join(dataDir(), 'first-invitation.txt')

@@ -59,3 +59,8 @@ export async function countAttempt(event: H3Event, name: LimitName, key: string)
 export async function clearAttempts(name: LimitName, key: string): Promise<void> {
   await limiterOf(name).delete(hashToken(key))
 }
+
+/** Gives back one counted attempt, after a success, where others may share the key. */
+export async function giveBackAttempt(name: LimitName, key: string): Promise<void> {
+  await limiterOf(name).reward(hashToken(key))
+}

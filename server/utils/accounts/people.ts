@@ -1,12 +1,15 @@
 /** Signing in and out, registering, passwords. */
+import { rm } from 'node:fs/promises'
 import type { H3Event } from 'h3'
 import type { z } from 'zod'
 import type { InvitationPreview, Me, Role, changePasswordBody, forgotBody, profileBody, registerBody, resetBody, signInBody } from '../../../shared/api/account'
 import { emailSchema } from '../../../shared/api/account'
 import { audit } from '../audit'
+import type { Db } from '../db'
 import { useDb } from '../db'
 import { problem, texts } from '../errors'
-import { clearAttempts, clientAddress, countAttempt } from '../limits'
+import { firstInvitationFile } from '../folders'
+import { clearAttempts, clientAddress, countAttempt, giveBackAttempt } from '../limits'
 import { deliverMails, publicUrl, queueMail } from '../mail'
 import type { Actor } from '../session'
 import { beginSession, currentActor, meOf } from '../session'
@@ -36,6 +39,7 @@ export async function signIn(event: H3Event, { email: given, password }: z.outpu
   const right = await verifyPassword(user?.password_hash ?? await hashOfNobody(), password)
   if (!user || !right || !user.active) throw problem(401, 'wrong-sign-in', texts.wrongSignIn)
   await clearAttempts('sign-in', key)
+  await giveBackAttempt('sign-in-address', address)
   return answerMe(event, user.id)
 }
 
@@ -64,22 +68,31 @@ export async function register(event: H3Event, { token, name, password }: z.outp
     await addMember(trx, { id, clubId: invitation.club_id, email: invitation.email, name, role: invitation.role, passwordHash })
     await audit(trx, { clubId: invitation.club_id, userId: id, actor: name, action: 'joined', kind: 'user', id, detail: `as ${invitation.role}` })
   })
+  // Only the very first invitation has no sender; its link was kept for the operator.
+  if (invitation.invited_by === null) await rm(firstInvitationFile(), { force: true })
   return answerMe(event, id)
 }
 
 /** Writes a person and their membership. */
-export async function addMember(db: import('../db').Db, person: { id: string, clubId: string, email: string, name: string, role: Role, passwordHash: string }): Promise<void> {
+export async function addMember(db: Db, person: { id: string, clubId: string, email: string, name: string, role: Role, passwordHash: string }): Promise<void> {
   const now = new Date()
   await db('users').insert({ id: person.id, email: person.email, name: person.name, password_hash: person.passwordHash, created_at: now })
   await db('memberships').insert({ club_id: person.clubId, user_id: person.id, role: person.role, active: true, joined_at: now })
 }
 
+/**
+ * Mails a way to a new password, if there is such an account. The work begins after the answer, so that the time of
+ * the answer does not tell whether there is.
+ */
 export async function forgotPassword(event: H3Event, { email: given }: z.output<typeof forgotBody>): Promise<void> {
   await countAttempt(event, 'forgot', `${given.trim().toLowerCase()} ${clientAddress(event)}`)
   const parsed = emailSchema.safeParse(given.trim())
-  if (!parsed.success) return
+  if (parsed.success) event.waitUntil(mailReset(parsed.data).catch(error => console.error('A reset could not be mailed:', (error as Error).message)))
+}
+
+async function mailReset(email: string): Promise<void> {
   const db = useDb()
-  const user = await db('users as u').join('memberships as m', 'm.user_id', 'u.id').where({ 'u.email': parsed.data, 'm.active': true }).first('u.id', 'u.name', 'u.email', 'm.club_id')
+  const user = await db('users as u').join('memberships as m', 'm.user_id', 'u.id').where({ 'u.email': email, 'm.active': true }).first('u.id', 'u.name', 'u.email', 'm.club_id')
   if (!user) return
   const token = newToken()
   await db.transaction(async (trx) => {
@@ -89,7 +102,7 @@ export async function forgotPassword(event: H3Event, { email: given }: z.output<
       text: `Hello ${user.name},\n\nsomebody, probably you, asked for a new password. Choose it here within two hours:\n\n${publicUrl()}/reset?token=${token}\n\nIf it was not you, do nothing: your password stays as it is.\n`,
     })
   })
-  void deliverMails()
+  await deliverMails()
 }
 
 export async function resetPassword(event: H3Event, { token, password }: z.output<typeof resetBody>): Promise<void> {
@@ -103,7 +116,7 @@ export async function resetPassword(event: H3Event, { token, password }: z.outpu
   })
 }
 
-async function setPassword(db: import('../db').Db, userId: string, passwordHash: string) {
+async function setPassword(db: Db, userId: string, passwordHash: string) {
   await db('users').where({ id: userId }).update({ password_hash: passwordHash })
   await db('sessions').where({ user_id: userId }).delete()
   const row = await db('users as u').join('memberships as m', 'm.user_id', 'u.id').where('u.id', userId).first('u.name', 'm.club_id')
