@@ -50,7 +50,6 @@ export default defineNuxtConfig({
     '/files/**': { headers: { 'Content-Security-Policy': staticPolicy } },
     '/s/**': { headers: { 'Referrer-Policy': 'no-referrer', 'Cache-Control': 'no-store', 'X-Robots-Tag': 'noindex' } },
   },
-  auth: { loadStrategy: 'none' },
   compatibilityDate: '2025-07-15',
   vite: {
     server: { headers: isolation },
@@ -60,6 +59,7 @@ export default defineNuxtConfig({
   // AssemblyScript only looks like TypeScript; scripts/build-kernels.mjs compiles it.
   typescript: { strict: true, tsConfig: { exclude: ['../workers/kernels/assembly/**'] } },
   telemetry: { enabled: false },
+  auth: { loadStrategy: 'none' },
   eslint: { config: { stylistic: true } },
   tailwindcss: { cssPath: '~/assets/css/main.css', viewer: false },
 })
