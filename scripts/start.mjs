@@ -18,7 +18,7 @@ async function seedDemo({ env }, url) {
 }
 
 async function printSignIns({ env }) {
-  const { code, output } = await run(process.execPath, [tsx, path.join(root, 'scripts', 'seed', 'sign-ins.ts')], { env: { ...process.env, ...env } })
+  const { code, output } = await run(process.execPath, [tsx, path.join(root, 'scripts', 'sign-ins.ts')], { env: { ...process.env, ...env } })
   if (code === 0) say(`\nDemo sign-ins (e-mail address, password):\n${output.trimEnd()}`)
 }
 
