@@ -29,7 +29,8 @@ export interface GradeOptions {
   onGrowth: (table: GradeTable, done: number) => Promise<void>
 }
 
-const GROWTH_MS = 250
+/** Least time between two tables; longer for many frames, because every table is copied whole. */
+const growthMs = (frames: number): number => Math.max(250, frames / 100)
 
 /** One sequential read: every frame's scores, place and first shift; and the plain average. */
 export async function gradePass(context: PassContext, surveyed: Surveyed, options: GradeOptions): Promise<Graded> {
@@ -65,7 +66,7 @@ export async function gradePass(context: PassContext, surveyed: Surveyed, option
     }
     markUnreadable(table, frames.unreadable)
     const now = performance.now()
-    if (now - grownAt > GROWTH_MS) {
+    if (now - grownAt > growthMs(frames.count)) {
       await options.onGrowth(table, done)
       grownAt = performance.now()
     }
