@@ -1,5 +1,5 @@
 import type { ResampleKernel } from '../../shared/schemas/recipe'
-import { axisShift } from './weights'
+import { axisShift, coveredFrom, coveredTo, movedBy } from './weights'
 
 /** Fixed-point values are clipped to this, so that 500 of them fit a 32-bit sum. */
 export const FIXED_LIMIT = 4_194_303
@@ -14,9 +14,9 @@ export interface Covered { x0: number, y0: number, x1: number, y1: number }
 
 /** What a frame shifted by (dx, dy) covers of its own grid. May be empty (x1 ≤ x0 or y1 ≤ y0). */
 export function coveredBy(kernel: ResampleKernel, width: number, height: number, dx: number, dy: number): Covered {
-  const x = axisShift(kernel, dx, width)
-  const y = axisShift(kernel, dy, height)
-  return { x0: x.from, y0: y.from, x1: x.to, y1: y.to }
+  const x = movedBy(kernel, dx)
+  const y = movedBy(kernel, dy)
+  return { x0: coveredFrom(x), y0: coveredFrom(y), x1: coveredTo(x, width), y1: coveredTo(y, height) }
 }
 
 /** Buffers that one accumulator needs; reused for every frame of the same width. */

@@ -39,11 +39,17 @@ export interface AxisShift { offset: number, weights: Float32Array, from: number
 export function axisShift(kernel: ResampleKernel, shift: number, length: number): AxisShift {
   const whole = Math.floor(-shift)
   const taps = tapsAt(kernel, -shift - whole)
-  const effective = taps.weights.length === 1 ? -(whole + taps.first) : shift
-  return {
-    offset: whole + taps.first,
-    weights: taps.weights,
-    from: Math.max(0, Math.ceil(effective)),
-    to: Math.min(length, Math.floor(length - 1 + effective) + 1),
-  }
+  const moved = movedBy(kernel, shift)
+  return { offset: whole + taps.first, weights: taps.weights, from: coveredFrom(moved), to: coveredTo(moved, length) }
 }
+
+/** The shift that a kernel really makes: whole pixels for "nearest", a half to the larger source coordinate. */
+export function movedBy(kernel: ResampleKernel, shift: number): number {
+  if (kernel !== 'nearest') return shift
+  const whole = Math.floor(-shift)
+  return -(whole + (-shift - whole < 0.5 ? 0 : 1))
+}
+
+/** First output that a moved axis covers, and the one after the last. */
+export const coveredFrom = (moved: number): number => Math.max(0, Math.ceil(moved))
+export const coveredTo = (moved: number, length: number): number => Math.min(length, Math.floor(length - 1 + moved) + 1)
