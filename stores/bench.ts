@@ -1,0 +1,320 @@
+/**
+ * The open capture on the bench: what it says of itself, the recipe with its history, the passes as they go, and
+ * the stack on the screen. Owns the core's handle; the screens only look and call.
+ */
+import { defineStore } from 'pinia'
+import type { CaptureInput, FrameColumns, Optics, PassProgress, RunEvent, StackImage } from '~~/workers/api'
+import type { CaptureFacts, CaptureOverrides, TargetKind } from '~~/shared/schemas/capture'
+import { readRecipe } from '~~/shared/recipe/migrate'
+import { withRecipeValue } from '~~/shared/recipe/sentences'
+import { defaultRecipe, type Recipe } from '~~/shared/schemas/recipe'
+import { keepCount, type DisplayStretch, type LadderInfo, type Provenance, type StackFigures } from '~~/shared/schemas/run'
+import { autoStretch } from '~/composables/useStretch'
+import { rememberBench, recallBench } from '~/composables/useBenchMemory'
+import { CoreStopped, useCore, type CoreHandle } from '~/composables/useCore'
+
+export type BenchPhase = 'empty' | 'opening' | 'running' | 'ready' | 'cancelled'
+export interface SavedRecipe { id: string, name: string, version: number, versionId: string, mine: boolean, recipe: Recipe }
+/** Optics beyond what captures say. */
+export interface OpticsExtra { obstruction: number, wavelengthNm: number, instrumentId: string | null }
+export interface Proof { fraction: number, image: StackImage, figures: StackFigures }
+
+const HISTORY = 200
+const keepsOnly = (a: Recipe, b: Recipe) => JSON.stringify({ ...a, keep: 0, restore: 0 }) === JSON.stringify({ ...b, keep: 0, restore: 0 })
+
+export const useBenchStore = defineStore('bench', () => {
+  let core: CoreHandle | null = null
+  const phase = ref<BenchPhase>('empty')
+  const input = shallowRef<CaptureInput | null>(null)
+  const facts = shallowRef<CaptureFacts | null>(null)
+  const overrides = ref<CaptureOverrides>({})
+  const extra = ref<OpticsExtra>({ obstruction: 0, wavelengthNm: 550, instrumentId: null })
+  const problem = ref<string | null>(null)
+  const resumed = ref(false)
+
+  const recipe = shallowRef<Recipe>(defaultRecipe)
+  const saved = shallowRef<SavedRecipe | null>(null)
+  const past = shallowRef<Recipe[]>([])
+  const future = shallowRef<Recipe[]>([])
+
+  const progress = shallowRef<PassProgress | null>(null)
+  const columns = shallowRef<FrameColumns | null>(null)
+  const kind = ref<TargetKind | null>(null)
+  const chosen = shallowRef<{ blurPx: number, windowPx: number, centre: { x: number, y: number } } | null>(null)
+  const noSignal = ref(false)
+  const ranked = ref(0)
+  const setAside = ref<Record<string, number>>({})
+  const ladder = shallowRef<LadderInfo | null>(null)
+  const proofs = shallowRef<Proof[]>([])
+  const average = shallowRef<{ image: StackImage, figures: StackFigures } | null>(null)
+  const provenance = shallowRef<Provenance | null>(null)
+
+  const image = shallowRef<StackImage | null>(null)
+  const figures = shallowRef<StackFigures | null>(null)
+  const stretch = ref<DisplayStretch>({ black: 0, white: 1, gamma: 1 })
+  const stretchIsAuto = ref(true)
+  const showRestored = ref(true)
+  const dragging = ref(false)
+
+  const count = computed(() => keepCount(recipe.value.keep.fraction, ranked.value))
+  const optics = computed<Optics | null>(() => {
+    const f = facts.value
+    if (!f?.apertureMm || !f.focalLengthMm || !f.pixelSizeUm) return null
+    return { apertureMm: f.apertureMm, focalLengthMm: f.focalLengthMm, pixelSizeUm: f.pixelSizeUm, obstruction: extra.value.obstruction, wavelengthNm: extra.value.wavelengthNm }
+  })
+  const scale = computed(() => (facts.value?.pixelSizeUm && facts.value.focalLengthMm ? 206.264806 * facts.value.pixelSizeUm / facts.value.focalLengthMm : null))
+  const changed = computed(() => saved.value === null || JSON.stringify(saved.value.recipe) !== JSON.stringify(recipe.value))
+  const busy = computed(() => phase.value === 'running' || phase.value === 'opening')
+
+  function clearResults() {
+    progress.value = null; columns.value = null; kind.value = null; chosen.value = null; noSignal.value = false; ranked.value = 0
+    setAside.value = {}; ladder.value = null; proofs.value = []; average.value = null; provenance.value = null
+    image.value = null; figures.value = null; stretchIsAuto.value = true
+  }
+
+  /** Opens a capture; a bad one leaves its message and a bench that can open the next. */
+  async function open(next: CaptureInput, corrected: CaptureOverrides = {}, keepRecipe = false) {
+    core ??= useCore()
+    const wasOpen = facts.value !== null
+    phase.value = 'opening'
+    problem.value = null
+    try {
+      const answer = await core.open(next, corrected)
+      if (!answer.ok) {
+        problem.value = answer.problem.message
+        clearResults()
+        facts.value = null
+        phase.value = 'empty'
+        return false
+      }
+      clearResults()
+      input.value = next
+      facts.value = answer.facts
+      overrides.value = corrected
+      resumed.value = answer.resumable
+      const memory = recallBench(answer.facts.fingerprint)
+      if (!keepRecipe) {
+        recipe.value = memory?.recipe ?? (wasOpen || past.value.length ? { ...recipe.value, register: { ...recipe.value.register, centre: null } } : defaultRecipe)
+        past.value = []
+        future.value = []
+        if (memory) extra.value = memory.extra
+        // Corrections made the last time are made again, which opens the file once more only where they matter.
+        if (memory && Object.keys(memory.overrides).length && Object.keys(corrected).length === 0) return await open(next, memory.overrides, true)
+      }
+      void run()
+      return true
+    }
+    catch (error) {
+      failed(error)
+      return false
+    }
+  }
+
+  function failed(error: unknown) {
+    problem.value = error instanceof Error ? error.message : String(error)
+    phase.value = facts.value && !(error instanceof CoreStopped) ? 'cancelled' : 'empty'
+    if (error instanceof CoreStopped) {
+      clearResults()
+      facts.value = null
+    }
+  }
+
+  /** Corrects what the capture says; only what changes samples or their meaning is computed again (the core knows). */
+  async function correct(next: CaptureOverrides) {
+    if (!input.value) return
+    await open(input.value, { ...overrides.value, ...next }, true)
+  }
+
+  let runNumber = 0
+  async function run() {
+    if (!core || !facts.value) return
+    const mine = ++runNumber
+    phase.value = 'running'
+    problem.value = null
+    try {
+      const { cancelled } = await core.run(recipe.value, optics.value, event => (mine === runNumber ? take(event) : undefined))
+      if (mine !== runNumber) return
+      progress.value = null
+      phase.value = cancelled ? 'cancelled' : 'ready'
+      if (!cancelled) await follow()
+    }
+    catch (error) {
+      if (mine === runNumber) failed(error)
+    }
+    remember()
+  }
+
+  function show(next: StackImage) {
+    image.value = next
+    if (stretchIsAuto.value) stretch.value = autoStretch(next)
+  }
+
+  function take(event: RunEvent) {
+    switch (event.kind) {
+      case 'progress': progress.value = event.progress; break
+      case 'surveyed':
+        kind.value = event.target; chosen.value = event.chosen; noSignal.value = event.noSignal
+        if (!ladder.value) show(event.preview)
+        break
+      case 'frames': columns.value = event.columns; break
+      case 'preview': if (!ladder.value) show(event.image); break
+      case 'ranked': ranked.value = event.ranked; setAside.value = event.setAside as Record<string, number>; break
+      case 'ladder': ladder.value = event.ladder; void follow(); break
+      case 'proof':
+        if (event.fraction === 'average') average.value = { image: event.image, figures: event.figures }
+        else proofs.value = [...proofs.value.filter(proof => proof.fraction !== event.fraction), { fraction: event.fraction, image: event.image, figures: event.figures }].sort((a, b) => b.fraction - a.fraction)
+        break
+      case 'done': provenance.value = event.provenance; break
+      case 'timing': break
+    }
+  }
+
+  /** Asks for the wanted stack; while one is on its way only the last wish counts. The count shown is the image's own. */
+  let following = false
+  let wish = ''
+  async function follow() {
+    if (following || !core || !ladder.value) return
+    following = true
+    try {
+      for (;;) {
+        const restored = showRestored.value && recipe.value.restore.scales > 0
+        const wanted = `${count.value} ${restored} ${dragging.value} ${JSON.stringify(recipe.value.restore)}`
+        if (wanted === wish && image.value?.count === count.value) break
+        if (wanted === wish && dragging.value) break
+        wish = wanted
+        try {
+          show(await core.stack(count.value, restored, dragging.value))
+        }
+        catch (error) {
+          if ((error as Error).name !== 'AbortError') throw error
+        }
+        if (`${count.value} ${restored} ${dragging.value} ${JSON.stringify(recipe.value.restore)}` === wanted) break
+      }
+      if (!dragging.value && image.value) figures.value = await core.figures(image.value.count)
+    }
+    catch (error) {
+      if (!(error instanceof CoreStopped)) problem.value = (error as Error).message
+    }
+    finally {
+      following = false
+      if (core && ladder.value && image.value && !dragging.value && image.value.count !== count.value) {
+        wish = ''
+        void follow()
+      }
+    }
+  }
+
+  async function apply(next: Recipe) {
+    const before = recipe.value
+    if (JSON.stringify(before) === JSON.stringify(next)) return
+    recipe.value = next
+    remember()
+    // Keep and restoration need no pass: the ladder has them.
+    if (keepsOnly(before, next) && ladder.value && phase.value !== 'cancelled') {
+      if (before.restore.scales !== next.restore.scales || JSON.stringify(before.restore) !== JSON.stringify(next.restore)) await core?.run(next, optics.value, take).catch(() => undefined)
+      return follow()
+    }
+    ladder.value = null
+    await run()
+  }
+
+  /** Changes the recipe, undoable. A drag of the slider is one change. */
+  function change(next: Recipe, merge = false) {
+    if (JSON.stringify(next) === JSON.stringify(recipe.value)) return
+    if (!merge) {
+      past.value = [...past.value.slice(-HISTORY), recipe.value]
+      future.value = []
+    }
+    return apply(next)
+  }
+  function edit(path: string, value: unknown) {
+    return change(readRecipe(withRecipeValue(recipe.value, path, value)))
+  }
+  function undo() {
+    const last = past.value.at(-1)
+    if (!last) return
+    past.value = past.value.slice(0, -1)
+    future.value = [recipe.value, ...future.value]
+    void apply(last)
+  }
+  function redo() {
+    const next = future.value[0]
+    if (!next) return
+    future.value = future.value.slice(1)
+    past.value = [...past.value, recipe.value]
+    void apply(next)
+  }
+
+  let dragStart: Recipe | null = null
+  /** Sets the keep fraction; `live` while a hand is on the slider. */
+  function keep(fraction: number, live: boolean) {
+    if (live && !dragging.value) {
+      dragStart = recipe.value
+      dragging.value = true
+    }
+    if (recipe.value.keep.fraction !== fraction) {
+      const next = { ...recipe.value, keep: { fraction } }
+      if (dragStart) {
+        recipe.value = next
+        void follow()
+      }
+      else void change(next)
+    }
+    if (!live && dragging.value) endDrag()
+  }
+  function endDrag() {
+    if (!dragging.value) return
+    dragging.value = false
+    const start = dragStart
+    dragStart = null
+    if (start && start.keep.fraction !== recipe.value.keep.fraction) {
+      past.value = [...past.value.slice(-HISTORY), start]
+      future.value = []
+    }
+    remember()
+    void follow()
+  }
+
+  function setStretch(next: DisplayStretch | 'auto') {
+    stretchIsAuto.value = next === 'auto'
+    if (next !== 'auto') stretch.value = next
+    else if (image.value) stretch.value = autoStretch(image.value)
+  }
+
+  /** Applies a saved recipe to the open capture. Its window stays where the target is, unless it names a place. */
+  function applySaved(next: SavedRecipe) {
+    saved.value = next
+    return change(next.recipe)
+  }
+
+  function remember() {
+    if (facts.value && input.value) rememberBench({ fingerprint: facts.value.fingerprint, name: facts.value.name, input: input.value, recipe: recipe.value, overrides: overrides.value, extra: extra.value, finished: phase.value === 'ready' })
+  }
+
+  async function cancel() {
+    await core?.cancel()
+  }
+
+  async function close() {
+    runNumber++
+    const was = core
+    core = null
+    phase.value = 'empty'
+    facts.value = null
+    input.value = null
+    problem.value = null
+    past.value = []
+    future.value = []
+    clearResults()
+    await was?.close()
+  }
+
+  const exporter = () => core
+  watch(showRestored, () => follow())
+
+  return {
+    phase, input, facts, overrides, extra, problem, resumed, recipe, saved, past, future, progress, columns, kind, chosen, noSignal, ranked, setAside, ladder, proofs, average, provenance,
+    image, figures, stretch, stretchIsAuto, showRestored, dragging, count, optics, scale, changed, busy,
+    open, correct, run, change, edit, undo, redo, keep, endDrag, setStretch, applySaved, cancel, close, remember, exporter,
+  }
+})
