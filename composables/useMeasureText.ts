@@ -6,7 +6,7 @@ function decimalsFor(error: number | null, fallback: number): number {
   if (error === null || !(error > 0)) return fallback
   const order = Math.floor(Math.log10(error))
   const leading = error / 10 ** order
-  return Math.max(0, Math.min(4, (leading < 1.95 ? 1 : 0) - order))
+  return Math.max(0, Math.min(3, (leading < 1.95 ? 1 : 0) - order))
 }
 
 export function measureText(px: number | null, errorPx: number | null, scaleArcsecPerPx: number | null): MeasureText | null {
