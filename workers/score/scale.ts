@@ -15,8 +15,8 @@ const TILE = 16
 const NEARLY = 0.99
 /** With fewer frames than this a correlation says nothing. */
 const LEAST_FRAMES = 12
-const MOST_FRAMES = 40
-const MOST_SIDE = 208
+const MOST_FRAMES = 32
+const MOST_SIDE = 176
 /** What is taken where nothing can be told. */
 const FALLBACK = 1.5
 

@@ -6,10 +6,11 @@
  * whole alike; dividing by the frame's total would let a field that drifts rank the frames). The Laplacian's
  * noise floor is subtracted first, or dim frames would look sharp.
  */
-import { blurNoiseGain, createWindowBlur, laplacianNoiseGain } from './blur'
+import { blurNoiseGain } from './blur'
 import { createBlocks, fillBlocks, quantileInPlace } from './blocks'
 import { createFollower } from './follow'
 import { laplacianVariance, quadraticPeak } from './measures'
+import { createSmoother, fullSmoother } from './smooth'
 import type { FrameScore, ScorePlan } from './types'
 
 export interface Scorer {
@@ -58,9 +59,10 @@ function compactScorer(plan: ScorePlan): Scorer {
   const blocks = createBlocks(width, height)
   const { columns, rows, means } = blocks
   const beside = new Float32Array(means.length)
-  const smooth = new Float32Array(side * side)
-  const blur = createWindowBlur(blurPx, side, side)
-  const floor = noise * noise * laplacianNoiseGain(blurPx)
+  // A star's peak is taken at full sampling whatever the smoothing.
+  const smoother = form === 'disc' ? createSmoother(blurPx, side, side) : fullSmoother(blurPx, side)
+  const { bin, out: smooth } = smoother
+  const floor = noise * noise * smoother.laplacianNoise
   const least = LEAST_STAR * noise * blurNoiseGain(blurPx)
   const leastBlock = LEAST_STAR * noise / blocks.side
   const crop: Crop = { x0: 0, y0: 0, columns: 0, rows: 0 }
@@ -127,8 +129,10 @@ function compactScorer(plan: ScorePlan): Scorer {
       }
 
       cropAbout(x, y, side, side, width, height, crop)
-      blur.blur(luminance, width, height, crop.x0, crop.y0, crop.columns, crop.rows, smooth)
-      quadraticPeak(smooth, crop.columns, crop.rows, peak)
+      smoother.smooth(luminance, width, height, crop.x0, crop.y0, crop.columns, crop.rows)
+      const across = Math.floor(crop.columns / bin)
+      const down = Math.floor(crop.rows / bin)
+      quadraticPeak(smooth, across, down, peak)
       const flux = windowSum(luminance, width, crop) - background * crop.columns * crop.rows
       const height0 = peak.value - background
       if (form === 'star') {
@@ -138,8 +142,8 @@ function compactScorer(plan: ScorePlan): Scorer {
         out.outOfField = x < edge || y < edge || x > width - 1 - edge || y > height - 1 - edge
       }
       const safe = flux > 0 ? flux : Infinity
-      const variance = laplacianVariance(smooth, crop.columns, crop.rows) - floor
-      out.laplacian = variance * ((crop.columns - 2) * (crop.rows - 2)) / (safe * safe)
+      const variance = laplacianVariance(smooth, across, down) - floor
+      out.laplacian = variance * ((across - 2) * (down - 2)) / (safe * safe)
       out.peak = height0 / safe
       out.flux = flux
       out.background = background
@@ -172,9 +176,9 @@ function fieldScorer(plan: ScorePlan): Scorer {
   const { width, height, blurPx, noise, centre } = plan
   const sideX = Math.max(3, Math.round(0.8 * width))
   const sideY = Math.max(3, Math.round(0.8 * height))
-  const smooth = new Float32Array(sideX * sideY)
-  const blur = createWindowBlur(blurPx, sideX, sideY)
-  const floor = noise * noise * laplacianNoiseGain(blurPx)
+  const smoother = createSmoother(blurPx, sideX, sideY)
+  const { bin, out: smooth } = smoother
+  const floor = noise * noise * smoother.laplacianNoise
   const follower = plan.guide ? createFollower(plan.guide, width, height) : null
   const moved = { x: 0, y: 0, strength: 0 }
   const crop: Crop = { x0: 0, y0: 0, columns: 0, rows: 0 }
@@ -187,11 +191,13 @@ function fieldScorer(plan: ScorePlan): Scorer {
       out.x = centre.x + moved.x
       out.y = centre.y + moved.y
       cropAbout(middleX + moved.x, middleY + moved.y, sideX, sideY, width, height, crop)
-      blur.blur(luminance, width, height, crop.x0, crop.y0, crop.columns, crop.rows, smooth)
+      smoother.smooth(luminance, width, height, crop.x0, crop.y0, crop.columns, crop.rows)
+      const across = Math.floor(crop.columns / bin)
+      const down = Math.floor(crop.rows / bin)
       const flux = windowSum(luminance, width, crop) / (crop.columns * crop.rows)
       const safe = flux > 0 ? flux : Infinity
-      quadraticPeak(smooth, crop.columns, crop.rows, peak)
-      out.laplacian = (laplacianVariance(smooth, crop.columns, crop.rows) - floor) / (safe * safe)
+      quadraticPeak(smooth, across, down, peak)
+      out.laplacian = (laplacianVariance(smooth, across, down) - floor) / (safe * safe)
       out.peak = peak.value / safe
       out.flux = flux
       out.background = 0
