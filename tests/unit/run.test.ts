@@ -38,6 +38,9 @@ describe('a run', () => {
     const { ranking } = await run(engine, defaultRecipe, event => events.push(event))
     expect(ranking.order.length).toBe(150)
     const kinds = events.map(event => event.kind)
+    // A single exposure is there before the survey is.
+    expect(kinds.indexOf('preview')).toBeLessThan(kinds.indexOf('surveyed'))
+    expect(kinds).toContain('preview')
     for (const kind of ['surveyed', 'frames', 'ranked', 'ladder', 'proof'] as const) expect(kinds).toContain(kind)
     expect(events.filter(event => event.kind === 'proof').map(event => event.fraction)).toEqual(['average', 0.01, 0.02, 0.05, 0.1, 0.2, 0.5, 1])
     expect(events.filter(event => event.kind === 'timing').map(event => event.pass)).toEqual(['survey', 'grade', 'refine', 'ladder', 'proofs'])

@@ -1,9 +1,12 @@
 import type { StackImage } from '../api'
 import type { Samples } from '../decode/types'
+import type { PreparePlan } from '../prepare/types'
+import type { CaptureFacts } from '../../shared/schemas/capture'
 import type { Recipe } from '../../shared/schemas/recipe'
 import type { PassContext } from './context'
 import { unlessAborted } from './feed'
 import { breathe } from './pool'
+import { singleFrame } from './preview'
 import type { Surveyed } from './survey-frames'
 
 /** Frames looked at, spread over the capture. */
@@ -19,7 +22,7 @@ export function spreadFrames(count: number, wanted: number): number[] {
 }
 
 /** Looks at some frames of the whole capture and decides what the recipe leaves open. A worker computes, so that a cancel is heard. */
-export async function surveyPass({ frames, pool, signal, progress }: PassContext, recipe: Recipe): Promise<Surveyed> {
+export async function surveyPass({ frames, pool, signal, progress, emit }: PassContext, recipe: Recipe): Promise<Surveyed> {
   const { facts } = frames.reader
   const pixels = facts.width * facts.height
   const numbers = spreadFrames(frames.count, Math.max(LEAST_FRAMES, Math.min(SURVEY_FRAMES, Math.floor(SURVEY_PIXELS / pixels))))
@@ -31,10 +34,17 @@ export async function surveyPass({ frames, pool, signal, progress }: PassContext
     samples.push(pool.shared ? frame : frame.slice())
     progress.add(1)
   }
+  // Something to see at once: a single exposure, before anything is known of it.
+  emit({ kind: 'preview', image: await singleFrame(frames, numbers[numbers.length >> 1]!, unrepaired(facts)) })
   await breathe()
   const surveyed = await unlessAborted(pool.call(0, { op: 'survey', facts, samples, recipe }), signal)
   progress.end()
   return surveyed
+}
+
+/** A plan that only knows the layout of a frame. */
+function unrepaired({ width, height, planes, mosaic }: CaptureFacts): PreparePlan {
+  return { width, height, planes, mosaic, saturation: null, hotPixels: new Int32Array(0), repairFrom: new Int32Array(0) }
 }
 
 /** A single prepared plane as an image. */
