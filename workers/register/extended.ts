@@ -18,7 +18,8 @@ import { createLoader } from './window'
 
 /** Sigmas (px) of the Gaussians that take away shading and grain in the two steps; a disc is held by its limb, a field by its detail. */
 const BROAD = { disc: { low: 6, high: 1.5 }, field: { low: 4, high: 1.5 } }
-const SHARP = { low: 6, high: 1 }
+/** Step 2 begins at lower frequencies: a Strehl ratio is the transfer over all of them. */
+const SHARP = { low: 9, high: 1 }
 /** How far from step 1 the peak of step 2 is looked for, px. */
 const REACH = 3.5
 /** A second peak of step 2 as high as this share of the first leaves the shift at step 1. */
