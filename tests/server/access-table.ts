@@ -3,6 +3,7 @@
  * access.test.ts fails for a route of the build that has none.
  */
 import { accountRows } from './access/accounts'
+import { archiveRows } from './access/archive'
 import type { AccessRow } from './access/row'
 
-export const accessTable: AccessRow[] = [...accountRows]
+export const accessTable: AccessRow[] = [...accountRows, ...archiveRows]

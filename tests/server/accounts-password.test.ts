@@ -91,7 +91,7 @@ describe('an invitation', () => {
 
   it('admits exactly one of twenty who use it together', async () => {
     const { token, email } = await makeInvitation(world)
-    const all = await Promise.all(Array.from({ length: 20 }, (_, i) => new Client().send('POST', '/api/auth/register', { body: { token, name: `Twin ${i}`, password: PASSWORD } })))
+    const all = await Promise.all(Array.from({ length: 20 }, (_, i) => new Client().send('POST', '/api/auth/register', { body: { token, name: `Twin ${i}`, password: PASSWORD }, localAddress: '127.0.0.7' })))
     expect(all.filter(({ status }) => status === 200)).toHaveLength(1)
     expect(all.filter(({ status }) => status >= 500)).toEqual([])
     expect(await useTestDb()('users').where({ email })).toHaveLength(1)

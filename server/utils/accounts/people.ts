@@ -53,6 +53,7 @@ async function openInvitation(token: string) {
 export async function previewInvitation(event: H3Event, token: string): Promise<InvitationPreview> {
   await countAttempt(event, 'token', clientAddress(event))
   const row = await openInvitation(token)
+  await giveBackAttempt('token', clientAddress(event))
   return { clubName: row.club_name, email: row.email, role: row.role, expiresAt: row.expires_at.toISOString() }
 }
 
@@ -68,6 +69,7 @@ export async function register(event: H3Event, { token, name, password }: z.outp
     await addMember(trx, { id, clubId: invitation.club_id, email: invitation.email, name, role: invitation.role, passwordHash })
     await audit(trx, { clubId: invitation.club_id, userId: id, actor: name, action: 'joined', kind: 'user', id, detail: `as ${invitation.role}` })
   })
+  await giveBackAttempt('token', clientAddress(event))
   // Only the very first invitation has no sender; its link was kept for the operator.
   if (invitation.invited_by === null) await rm(firstInvitationFile(), { force: true })
   return answerMe(event, id)
