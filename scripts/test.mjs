@@ -5,7 +5,7 @@
  */
 import { existsSync, mkdirSync, readdirSync, readFileSync, rmSync } from 'node:fs'
 import path from 'node:path'
-import { endLeftovers, run } from './lib/children.mjs'
+import { endLeftovers, markChildren, run } from './lib/children.mjs'
 import { browserPackages, databasePackages, ensureNodeModules, ensurePackages } from './lib/install.mjs'
 import { lockFolder } from './lib/lock.mjs'
 import { stopDatabaseOf } from './lib/mariadb.mjs'
@@ -99,9 +99,11 @@ try {
   const lock = await lockFolder(folder, 'npm test')
   atEnd(() => lock.release())
   endOnSignals(() => lock.note({ ending: true }))
+  // What an earlier, killed test run left: its programs, its servers, its databases and their data.
+  await endLeftovers(folder)
+  markChildren(folder)
   await ensurePackages(databasePackages)
   await ensureNodeModules()
-  // What an earlier, killed test run left: its servers, its databases and their data.
   for (const name of ['server', 'browser']) {
     await endLeftovers(path.join(folder, name))
     await stopDatabaseOf(path.join(folder, name))

@@ -55,8 +55,20 @@ function signalGroup(pid, signal) {
   catch { /* already gone */ }
 }
 
-/** The text that marks what belongs to a data folder in a process's environment. */
-export const markOf = folder => ({ LULL_CHILD: '1', NUXT_DATA_DIR: folder })
+/** Settings that mark a process as belonging to a data folder; see endLeftovers. */
+export const markOf = folder => ({ LULL_CHILD: folder, NUXT_DATA_DIR: folder })
+
+/** From here on, every child of this command carries the mark; packages of the system and the database are exempt. */
+export function markChildren(folder) {
+  process.env.LULL_CHILD = folder
+}
+
+/** The environment without the mark. */
+export function unmarked() {
+  const env = { ...process.env }
+  delete env.LULL_CHILD
+  return env
+}
 
 /**
  * Ends what an earlier command of this data folder left running when it was killed: only processes that carry our own
@@ -73,8 +85,7 @@ export async function endLeftovers(folder) {
 function carriesMark(pid, folder) {
   try {
     // A process that has ended but was not yet collected by its parent has an empty environment.
-    const settings = readFileSync(`/proc/${pid}/environ`, 'utf8').split('\0')
-    return settings.includes('LULL_CHILD=1') && settings.includes(`NUXT_DATA_DIR=${folder}`)
+    return readFileSync(`/proc/${pid}/environ`, 'utf8').split('\0').includes(`LULL_CHILD=${folder}`)
   }
   catch {
     return false

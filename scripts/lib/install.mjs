@@ -1,7 +1,7 @@
 /** Installs what a command needs and the machine lacks: Debian packages, and the npm packages of the lock file. */
 import { existsSync, readFileSync, writeFileSync } from 'node:fs'
 import path from 'node:path'
-import { run } from './children.mjs'
+import { run, unmarked } from './children.mjs'
 import { findProgram, hashOf, root, say, SetupError } from './system.mjs'
 
 /** The packages without a service of their own: nothing of the system's is started, enabled or configured. */
@@ -20,7 +20,7 @@ export async function ensurePackages(wanted) {
   }
   if (!findProgram('apt-get')) throw new SetupError(`Lull needs ${packages.join(' and ')}, and there is no apt-get here to install it. Install it with this system's own tools and start again.`)
   say(`Installing Debian's ${packages.join(' and ')} …`)
-  const env = { ...process.env, DEBIAN_FRONTEND: 'noninteractive' }
+  const env = { ...unmarked(), DEBIAN_FRONTEND: 'noninteractive' }
   for (const args of [['update', '-q'], ['install', '-y', '-q', '--no-install-recommends', ...packages]]) {
     const result = await run('apt-get', args, { env })
     if (result.code !== 0) throw new SetupError(`apt-get ${args[0]} failed:\n${lastLines(result.output)}\n\nMend that, or install it by hand, and start again:\n\n  ${command}`)

@@ -8,6 +8,7 @@ import { createHash, randomBytes } from 'node:crypto'
 import { existsSync, mkdirSync, openSync, readdirSync, readFileSync, renameSync, rmSync, writeFileSync } from 'node:fs'
 import os from 'node:os'
 import path from 'node:path'
+import { unmarked } from './children.mjs'
 import { findProgram, freePort, processRuns, SetupError, sleep } from './system.mjs'
 
 const user = () => os.userInfo().username
@@ -101,7 +102,7 @@ export async function startDatabase(folder, { wantedPort, durable = true, onStar
       '--skip-name-resolve', '--max-allowed-packet=64M', '--sql-mode=STRICT_ALL_TABLES,NO_ENGINE_SUBSTITUTION,ERROR_FOR_DIVISION_BY_ZERO',
       ...(durable ? [] : ['--innodb-flush-log-at-trx-commit=0', '--skip-log-bin', '--innodb-doublewrite=0']),
     ]
-    child = spawn(findProgram('mariadbd', 'mysqld'), args, { stdio: ['ignore', out, out], detached: true })
+    child = spawn(findProgram('mariadbd', 'mysqld'), args, { stdio: ['ignore', out, out], detached: true, env: unmarked() })
     child.unref()
     running = { pid: child.pid, port: state.port }
   }

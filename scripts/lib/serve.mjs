@@ -1,6 +1,6 @@
 /** Brings everything up in order and ends it cleanly; shared by start and dev. */
 import path from 'node:path'
-import { endAllChildren, endLeftovers, markOf } from './children.mjs'
+import { endAllChildren, endLeftovers, markChildren, markOf } from './children.mjs'
 import { databasePackages, ensureNodeModules, ensurePackages } from './install.mjs'
 import { lockFolder } from './lock.mjs'
 import { startDatabase } from './mariadb.mjs'
@@ -75,10 +75,11 @@ export async function prepare(command) {
   const lock = await lockFolder(folder, command)
   ending.push(() => lock.release())
   endOnSignals(() => lock.note({ ending: true }))
-  await ensurePackages(databasePackages)
-  await ensureNodeModules()
   const left = await endLeftovers(folder)
   if (left > 0) say(`Ended what an earlier, killed start had left running (${left} ${left === 1 ? 'process' : 'processes'}).`)
+  markChildren(folder)
+  await ensurePackages(databasePackages)
+  await ensureNodeModules()
   const { host, port } = await address()
   say('Starting the private database …')
   const database = await startDatabase(folder, { wantedPort: 3306 + (port % 1000), onStart: stop => ending.unshift(stop) })
