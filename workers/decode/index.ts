@@ -13,7 +13,7 @@ import { openSequence } from './sequence'
 import { CaptureError, type FrameReader } from './types'
 
 const HEAD_BYTES = 512
-const known = 'SER, FITS, TIFF, PNG, JPEG and uncompressed AVI'
+const known = 'SER, FITS, TIFF and PNG'
 
 /** Files beside a recording that are no frames: system files, notes, settings. */
 const foreign = (name: string) => name.startsWith('.') || /^(thumbs\.db|desktop\.ini)$/i.test(name) || /^(txt|log|json|csv|md|ini|pdf|db|xml|html?)$/.test(extensionOf(name))
