@@ -58,7 +58,9 @@ function readLock(file) {
 /** Whether the process of a lock still runs and is one of this checkout's commands, and not another one with its id. */
 function isAlive({ pid }) {
   try {
-    return path.relative(root, readlinkSync(`/proc/${pid}/cwd`)) === '' && readFileSync(`/proc/${pid}/cmdline`, 'utf8').includes('scripts/')
+    const words = readFileSync(`/proc/${pid}/cmdline`, 'utf8').split('\0')
+    const cwd = readlinkSync(`/proc/${pid}/cwd`)
+    return words.some(word => path.resolve(cwd, word).startsWith(path.join(root, 'scripts', path.sep)))
   }
   catch {
     return false
