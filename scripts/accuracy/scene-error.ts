@@ -2,12 +2,11 @@
  * How an extended stack compares with the scene seen through a perfect telescope: the scene convolved with the
  * diffraction-limited point-spread function and the pixel, put in place and scaled by least squares.
  */
-import { createForward, spectrumLength } from '../../workers/register/fft2'
+import { createForward, createInverse, spectrumLength, type InverseTransform } from '../../workers/register/fft2'
 import type { StackImage } from '../../workers/api'
 import { lambdaOverDPx } from '../../shared/optics'
 import type { KnownCapture } from './truth'
 
-import { createInverse, type InverseTransform } from '../../workers/register/fft2'
 
 /** Diffraction transfer of an unobstructed circle at frequency f (cycles/px), cut-off fc = 1/(λ/D in px). Goodman, Fourier Optics, ch. 6. */
 function diffraction(f: number, fc: number): number {
@@ -53,11 +52,12 @@ function onePlane(stack: Float32Array, width: number, height: number, scene: Flo
       spectrum[o + 1]! *= t
     }
   }
+  // A dozen pixels at the border are left out, where shifted frames do not overlap.
   const margin = 12
   const w = width - 2 * margin
   const h = height - 2 * margin
   // Where the stack's middle lies in the scene: best of a search about the scene's middle by whole, then fractional pixels.
-  const at = (dx: number, dy: number) => sampled(spectrum, n, cut, (sceneWidth - width) / 2 + margin + dx, (sceneHeight - height) / 2 + margin + dy, w, h, forward)
+  const at = (dx: number, dy: number) => sampled(spectrum, n, cut, (sceneWidth - width) / 2 + margin + dx, (sceneHeight - height) / 2 + margin + dy, w, h)
   let best = { dx: 0, dy: 0, error: Infinity }
   for (let step = 8, reach = 3; step >= 0.0625; step /= 2, reach = 1) {
     const centre = { ...best }
@@ -78,8 +78,7 @@ function onePlane(stack: Float32Array, width: number, height: number, scene: Flo
 let inverseCache: { plane: Float32Array, key: string } | null = null
 
 /** The blurred scene from (x0, y0), w × h, shifted in Fourier space. */
-function sampled(spectrum: Float64Array, n: number, cut: number, x0: number, y0: number, w: number, h: number, forward: ReturnType<typeof createForward>): Float32Array {
-  void forward
+function sampled(spectrum: Float64Array, n: number, cut: number, x0: number, y0: number, w: number, h: number): Float32Array {
   const ix = Math.floor(x0)
   const iy = Math.floor(y0)
   const fx = x0 - ix
