@@ -7,7 +7,6 @@ import type { StackImage } from '../../workers/api'
 import { lambdaOverDPx } from '../../shared/optics'
 import type { KnownCapture } from './truth'
 
-
 /** Diffraction transfer of an unobstructed circle at frequency f (cycles/px), cut-off fc = 1/(λ/D in px). Goodman, Fourier Optics, ch. 6. */
 function diffraction(f: number, fc: number): number {
   const u = f / fc
