@@ -118,8 +118,9 @@ export function useFiling() {
     } as never)
     // The id of the announced file makes the fingerprint its own, so that another run's file of the same name and size is never taken for it.
     for (const item of files) uppy.addFile({ name: item.name, type: 'application/octet-stream', data: item.blob, meta: { fileId: item.id, relativePath: item.id } })
+    const uploader = uppy
     uppy.on('progress', () => {
-      const done = uppy!.getFiles().reduce((sum, item) => sum + (Number(item.progress.bytesUploaded) || 0), 0)
+      const done = uploader.getFiles().reduce((sum, item) => sum + (Number(item.progress.bytesUploaded) || 0), 0)
       const now = performance.now()
       if (now - rate.at > 500) {
         const current = 1000 * (done - rate.bytes) / (now - rate.at)
