@@ -64,7 +64,8 @@ export async function readHeader(source: ByteSource, offset: number, signal?: Ab
 function sizeOfData(cards: Map<string, CardValue>, damaged: (what: string) => CaptureError): number {
   const bitpix = cards.get('BITPIX')
   const naxis = cards.get('NAXIS')
-  if (typeof bitpix !== 'number' || ![8, 16, 32, 64, -32, -64].includes(bitpix)) {
+  if (typeof bitpix !== 'number') throw damaged('BITPIX is missing or cannot be')
+  if (![8, 16, 32, 64, -32, -64].includes(bitpix)) {
     throw new CaptureError('unsupported-depth', `The FITS header says BITPIX ${String(bitpix)}; the standard knows 8, 16, 32, 64, −32 and −64. The file is damaged, or was written wrongly.`)
   }
   if (typeof naxis !== 'number' || !Number.isInteger(naxis) || naxis < 0 || naxis > 999) throw damaged('NAXIS is missing or cannot be')
