@@ -15,7 +15,7 @@ export function measureText(px: number | null, errorPx: number | null, scaleArcs
   const unit = scaleArcsecPerPx === null ? ' px' : '″'
   const error = errorPx === null ? null : errorPx * factor
   const decimals = decimalsFor(error, scaleArcsecPerPx === null ? 2 : 3)
-  return { value: `${(px * factor).toFixed(decimals)}${unit}`, error: error === null ? null : `± ${error.toFixed(decimals)}` }
+  return { value: `${(px * factor).toFixed(decimals)}${unit}`, error: error === null ? null : Number(error.toFixed(decimals)) === 0 ? `± < ${(10 ** -decimals).toFixed(decimals)}` : `± ${error.toFixed(decimals)}` }
 }
 
 /** A plain figure with a sensible number of digits: 4 significant ones, with separators above 10,000. */

@@ -15,11 +15,11 @@ function quantiles(samples: Float32Array, shares: readonly number[]): number[] {
 
 /** For a star the maximum counts, however few its pixels are; the exponent lifts the halo a little. */
 export function autoStretch(image: StackImage): DisplayStretch {
-  const [low, bright] = quantiles(image.samples, [0.2, 0.999]) as [number, number]
+  const [dark, low, bright, high] = quantiles(image.samples, [0.005, 0.2, 0.999, 0.9995]) as [number, number, number, number]
   let max = -Infinity
   for (const value of image.samples) if (value > max) max = value
   const white = max > low ? max : low + 1
   // Where most of the picture is dark (a star), a gamma of 2 shows the rings; a planet or terrain is shown as it is.
   const star = bright - low < 0.35 * (white - low)
-  return { black: low, white, gamma: star ? 1.8 : 1 }
+  return star ? { black: low, white, gamma: 1.8 } : { black: dark, white: high > dark ? high : dark + 1, gamma: 1 }
 }
