@@ -149,8 +149,11 @@ test('a capture becomes a filed, shared and reviewed run', async ({ page, browse
     await expect(mentor.getByText(target).first()).toBeVisible()
     await open(mentor, `${runPath}/review`)
     const picture = mentor.getByRole('application')
+    // The crosshair needs a picture to move over.
+    await expect(mentor.getByText('The stack is on its way.')).toHaveCount(0)
     await picture.focus()
     await mentor.keyboard.press('ArrowRight')
+    await expect(mentor.getByText(/^x \d+, y \d+: /)).toBeVisible()
     await mentor.keyboard.press('Enter')
     await mentor.getByLabel(/A pin at x/).fill('The companion stands clear of the first ring here.')
     await mentor.getByRole('button', { name: 'Set the pin' }).click()
