@@ -128,6 +128,9 @@ test('a capture becomes a filed, shared and reviewed run', async ({ page, browse
     const address = new URL(/https?:\/\/\S+/.exec(link)![0])
     await open(guest, address.pathname)
     await expect(guest.getByText(/of [\d,]+ frames/).first()).toBeVisible()
+    // Opening the ladder sets the slider to what is filed; a hand on it counts from then on.
+    await expect(guest.getByText('The stack is on its way.')).toHaveCount(0)
+    await expect(guest.getByText(/^longest lull/)).toBeVisible()
     const slider = guest.getByRole('slider', { name: 'Keep', exact: true })
     const before = await slider.getAttribute('aria-valuetext')
     await slider.focus()
