@@ -1,6 +1,7 @@
 /** Keeps the archive in order: settles what a kill left half done, sweeps what nobody needs, every hour. */
 import { purgeDeleted } from '../utils/archive/change'
-import { reconcile, sweepUploads } from '../utils/archive/receive'
+import { reconcile } from '../utils/archive/receive'
+import { sweepAnnouncements, sweepRefused, sweepStore, sweepUploads } from '../utils/archive/sweep'
 import { isMigrated } from '../utils/migrate'
 
 const HOUR = 3_600_000
@@ -17,7 +18,10 @@ export default defineNitroPlugin((nitro) => {
     try {
       await reconcile()
       await sweepUploads()
+      await sweepAnnouncements()
       await purgeDeleted()
+      await sweepRefused()
+      await sweepStore()
     }
     catch (error) {
       console.error('The archive could not be tidied:', (error as Error).message)

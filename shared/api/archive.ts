@@ -53,6 +53,8 @@ export interface RunFile {
   problem: string | null
   /** Where to download it once the run is filed; relative, works for the asker (member or guest). */
   url: string
+  /** Where an upload of it has begun and can go on, for its owner while the run is not filed; null otherwise. */
+  uploadUrl: string | null
 }
 
 export interface PersonRef { id: string, name: string }

@@ -27,65 +27,68 @@ export async function announce(actor: Actor, body: Announcement): Promise<string
 
   return useDb().transaction(async (trx) => {
     // One announcement at a time in a club: the row of the club is the lock that makes the quota exact.
-    const club = await trx('clubs').where({ id: actor.clubId }).forUpdate().first()
+    const club = await trx('clubs').where({ id: actor.clubId }).forUpdate().first('quota_bytes')
+    const columns = await columnsOf(trx, actor, body)
     const same = await trx('runs as r').join('captures as c', 'c.id', 'r.capture_id')
       .where({ 'r.owner_id': actor.id, 'r.state': 'announced', 'r.recipe_hash': result.recipeHash, 'c.fingerprint': result.facts.fingerprint, 'r.keep_count': result.keep.count }).first('r.id')
-    if (same) {
-      await refreshFiles(trx, same.id, body, already, actor)
-      return same.id as string
-    }
-    const used = await trx('run_files as f').join('runs as r', 'r.id', 'f.run_id').where({ 'r.club_id': actor.clubId }).sum({ bytes: 'f.size_bytes' }).first()
-    const wanted = body.files.reduce((sum, file) => sum + file.sizeBytes, 0)
-    const free = Number(club.quota_bytes) - Number(used?.bytes ?? 0)
-    if (wanted > free) throw problem(413, 'quota', `The club's archive has room for ${megabytes(Math.max(0, free))} more; this run needs ${megabytes(wanted)}. File it without the raw capture, or ask your organiser for room.`)
-
-    const instrument = body.instrumentId ? await trx('instruments').where({ id: body.instrumentId, club_id: actor.clubId }).whereNull('deleted_at').first() : null
-    if (body.instrumentId && !instrument) throw notFound()
-    if (body.replacesRunId && !await trx('runs').where({ id: body.replacesRunId, owner_id: actor.id, club_id: actor.clubId }).first()) throw notFound()
-    if (body.recipeVersionId) {
-      const version = await trx('recipe_versions as v').join('recipes as r', 'r.id', 'v.recipe_id').where({ 'v.id': body.recipeVersionId, 'r.club_id': actor.clubId }).first('r.owner_id', 'r.shared')
-      if (!version || (version.owner_id !== actor.id && !version.shared)) throw notFound()
-    }
-    const { facts } = result
-    const pixel = facts.pixelSizeUm ?? instrument?.pixel_size_um ?? null
-    const focal = facts.focalLengthMm ?? instrument?.focal_length_mm ?? null
-    const id = newId()
-    const now = new Date()
-    await trx('runs').insert({
-      id, club_id: actor.clubId, owner_id: actor.id, target_id: await targetOf(trx, actor.clubId, body.targetName, result.kind), capture_id: await captureOf(trx, actor.clubId, facts),
-      instrument_id: body.instrumentId, recipe_version_id: body.recipeVersionId, replaces_run_id: body.replacesRunId, state: 'announced', night: body.night, note: body.note,
-      result: JSON.stringify(result), recipe_hash: result.recipeHash, keep_fraction: result.keep.fraction, keep_count: result.keep.count, frames: facts.frameCount,
-      fwhm_px: result.figures.fwhmPx, fwhm_err_px: result.figures.fwhmErrPx, scale_arcsec_per_px: pixel && focal ? ARCSEC_PER_RADIAN_UM_MM * pixel / focal : null,
-      kind: result.kind, created_at: now,
-    })
-    await insertFiles(trx, id, body.files, already, actor)
-    await audit(trx, { clubId: actor.clubId, userId: actor.id, actor: actor.name, action: 'announced', kind: 'run', id, detail: body.targetName })
+    const id: string = same?.id ?? newId()
+    if (same) await trx('runs').where({ id }).update(columns)
+    else await trx('runs').insert({ id, club_id: actor.clubId, owner_id: actor.id, capture_id: await captureOf(trx, actor.clubId, result.facts), state: 'announced', recipe_hash: result.recipeHash, created_at: new Date(), ...columns })
+    const added = await setFiles(trx, id, body.files, already, actor)
+    if (added > 0) await holdQuota(trx, actor.clubId, Number(club.quota_bytes), added)
+    if (!same) await audit(trx, { clubId: actor.clubId, userId: actor.id, actor: actor.name, action: 'announced', kind: 'run', id, detail: body.targetName })
     return id
   })
 }
 
+/** What is said of the run, checked: only things of the club and the announcer's own earlier run can be named. */
+async function columnsOf(trx: Db, actor: Actor, body: Announcement) {
+  const { result } = body
+  const instrument = body.instrumentId ? await trx('instruments').where({ id: body.instrumentId, club_id: actor.clubId }).whereNull('deleted_at').first() : null
+  if (body.instrumentId && !instrument) throw notFound()
+  if (body.replacesRunId && !await trx('runs').where({ id: body.replacesRunId, owner_id: actor.id, club_id: actor.clubId, state: 'filed' }).first('id')) throw notFound()
+  if (body.recipeVersionId) {
+    const version = await trx('recipe_versions as v').join('recipes as r', 'r.id', 'v.recipe_id').where({ 'v.id': body.recipeVersionId, 'r.club_id': actor.clubId }).first('r.owner_id', 'r.shared')
+    if (!version || (version.owner_id !== actor.id && !version.shared)) throw notFound()
+  }
+  const pixel = result.facts.pixelSizeUm ?? instrument?.pixel_size_um ?? null
+  const focal = result.facts.focalLengthMm ?? instrument?.focal_length_mm ?? null
+  return {
+    target_id: await targetOf(trx, actor.clubId, body.targetName, result.kind), instrument_id: body.instrumentId, recipe_version_id: body.recipeVersionId, replaces_run_id: body.replacesRunId,
+    night: body.night, note: body.note, result: JSON.stringify(result), keep_fraction: result.keep.fraction, keep_count: result.keep.count, frames: result.facts.frameCount,
+    fwhm_px: result.figures.fwhmPx, fwhm_err_px: result.figures.fwhmErrPx, scale_arcsec_per_px: pixel && focal ? ARCSEC_PER_RADIAN_UM_MM * pixel / focal : null, kind: result.kind,
+  }
+}
+
 const megabytes = (bytes: number) => `${(bytes / 1e6).toLocaleString('en', { maximumFractionDigits: 1 })} MB`
 
-async function insertFiles(trx: Db, runId: string, files: Announcement['files'], already: Map<string, boolean>, actor: Actor) {
-  for (const file of files) {
+/** Everything of the club counts, what is announced and what can still be restored as well. Called with the new files among the rows. */
+async function holdQuota(trx: Db, clubId: string, quota: number, added: number): Promise<void> {
+  const used = await trx('run_files as f').join('runs as r', 'r.id', 'f.run_id').where({ 'r.club_id': clubId }).sum({ bytes: 'f.size_bytes' }).first()
+  const free = quota - Number(used?.bytes ?? 0) + added
+  if (added > free) throw problem(413, 'quota', `The club's archive has room for ${megabytes(Math.max(0, free))} more; this run needs ${megabytes(added)}. File it without the raw capture, or ask your organiser for room.`)
+}
+
+type NewFile = Announcement['files'][number]
+
+/** Makes the rows of a run those that are announced now; rows of the same file stay as they are. Returns the bytes that were added. */
+async function setFiles(trx: Db, runId: string, files: NewFile[], already: Map<string, boolean>, actor: Actor): Promise<number> {
+  const isSame = (row: { role: string, sha256: string, size_bytes: number }, file: NewFile) => row.role === file.role && row.sha256 === file.sha256 && Number(row.size_bytes) === file.sizeBytes
+  const rows = await trx('run_files').where({ run_id: runId })
+  const gone = rows.filter(row => row.state === 'refused' || !files.some(file => isSame(row, file)))
+  if (gone.length) await trx('run_files').whereIn('id', gone.map(row => row.id)).delete()
+  const kept = rows.filter(row => !gone.includes(row))
+  const fresh = files.filter(file => !kept.some(row => isSame(row, file)))
+  for (const file of fresh) {
     // Bytes that the same person has already brought need not come again; a stranger's knowledge of a hash opens nothing.
-    const own = already.get(file.sha256) && await trx('run_files as f').join('runs as r', 'r.id', 'f.run_id').where({ 'f.sha256': file.sha256, 'f.state': 'received', 'r.owner_id': actor.id }).first('f.id')
+    // The lock keeps the other row, and with it the stored file, until this one is written.
+    const own = already.get(file.sha256) && await trx('run_files as f').join('runs as r', 'r.id', 'f.run_id').where({ 'f.sha256': file.sha256, 'f.state': 'received', 'r.owner_id': actor.id }).forUpdate().first('f.id')
     await trx('run_files').insert({
       id: newId(), run_id: runId, role: file.role, name: cleanName(file.name), size_bytes: file.sizeBytes, sha256: file.sha256, type: typeOf(file.role),
       state: own ? 'received' : 'announced', received_at: own ? new Date() : null,
     })
   }
-}
-
-/** The same run announced again (after a closed page): files that are the same stay, others are announced anew. */
-async function refreshFiles(trx: Db, runId: string, body: Announcement, already: Map<string, boolean>, actor: Actor) {
-  const rows = await trx('run_files').where({ run_id: runId })
-  const isSame = (row: { role: string, sha256: string, size_bytes: number }, file: Announcement['files'][number]) => row.role === file.role && row.sha256 === file.sha256 && Number(row.size_bytes) === file.sizeBytes
-  const gone = rows.filter(row => row.state === 'refused' || !body.files.some(file => isSame(row, file)))
-  if (gone.length) await trx('run_files').whereIn('id', gone.map(row => row.id)).delete()
-  const kept = rows.filter(row => !gone.includes(row))
-  await insertFiles(trx, runId, body.files.filter(file => !kept.some(row => isSame(row, file))), already, actor)
-  await trx('runs').where({ id: runId }).update({ note: body.note, night: body.night, target_id: await targetOf(trx, actor.clubId, body.targetName, body.result.kind), result: JSON.stringify(body.result) })
+  return fresh.reduce((sum, file) => sum + file.sizeBytes, 0) - gone.reduce((sum, row) => sum + Number(row.size_bytes), 0)
 }
 
 export async function targetOf(trx: Db, clubId: string, name: string, kind: string): Promise<string> {

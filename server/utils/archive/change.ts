@@ -11,7 +11,7 @@ import { targetOf } from './announce'
 import { findRun, RESTORE_MS, runDetail } from './read'
 import type { FileRow } from './receive'
 import { settleFile } from './receive'
-import { removeStored } from './store'
+import { isStored, removeStored } from './store'
 
 /** The run, if the actor may do this with it. A run that may be seen but not changed answers 403. */
 export async function runFor(actor: Actor, id: string, action: ThingAction) {
@@ -27,7 +27,15 @@ export async function fileRun(actor: Actor, id: string): Promise<RunDetail> {
   if (run.state !== 'announced') throw problem(409, 'deleted', 'This run was deleted; restore it first.')
   const files = await useDb()('run_files').where({ run_id: id }) as FileRow[]
   const states = new Map<string, { name: string, state: FileRow['state'] }>()
-  for (const file of files) states.set(file.id, { name: file.role, state: await settleFile({ ...file, size_bytes: Number(file.size_bytes) }) })
+  for (const file of files) {
+    let state = await settleFile(file.id)
+    // The row says that it is there and the disk does not (a store brought back from an older copy): the bytes must come again.
+    if (state === 'received' && !await isStored(file.sha256, Number(file.size_bytes))) {
+      await useDb()('run_files').where({ id: file.id }).update({ state: 'announced', upload_id: null, received_at: null })
+      state = 'announced'
+    }
+    states.set(file.id, { name: file.role, state })
+  }
   const open = [...states.values()].filter(file => file.state !== 'received').map(file => file.name)
   const absent = requiredFileRoles.filter(role => !files.some(file => file.role === role))
   if (open.length || absent.length) throw problem(409, 'incomplete', `These files are not in the archive yet: ${[...open, ...absent].join(', ')}. Upload them and file the run again; what has arrived is kept.`, { missing: [...open, ...absent] })

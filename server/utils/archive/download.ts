@@ -21,7 +21,14 @@ export function parseRange(header: string | undefined, size: number): { start: n
   return end < start ? null : { start, end }
 }
 
-export async function sendFile(event: H3Event, file: FileRow) {
+/** Whether one of the validators of an If-None-Match header is this one (RFC 9110, 13.1.2: weak comparison, lists and `*`). */
+export function matchesAny(header: string | undefined, etag: string): boolean {
+  if (header === undefined) return false
+  return header.trim() === '*' || header.split(',').some(one => one.trim().replace(/^W\//, '') === etag)
+}
+
+/** For a guest nothing may stay in a cache: a withdrawn link takes everything along. */
+export async function sendFile(event: H3Event, file: FileRow, { guest = false } = {}) {
   const path = storedPath(file.sha256)
   const size = await sizeOf(path)
   if (size !== Number(file.size_bytes)) throw problem(503, 'store', 'The archive cannot find this file at the moment. Your organiser should look at the store and its backup.')
@@ -30,9 +37,9 @@ export async function sendFile(event: H3Event, file: FileRow) {
     'Content-Type': file.type, 'ETag': etag, 'Accept-Ranges': 'bytes', 'X-Content-Type-Options': 'nosniff',
     'Content-Disposition': file.role === 'preview' || file.role === 'thumbnail' || file.role === 'proofs' ? attachment(file.name).replace('attachment', 'inline') : attachment(file.name),
     // The content of an id never changes, but who may see it does: kept by the browser, asked again each time.
-    'Cache-Control': 'private, no-cache', 'Content-Security-Policy': 'default-src \'none\'; sandbox',
+    'Cache-Control': guest ? 'no-store' : 'private, no-cache', 'Content-Security-Policy': 'default-src \'none\'; sandbox',
   })
-  if (getHeader(event, 'if-none-match') === etag) {
+  if (matchesAny(getHeader(event, 'if-none-match'), etag)) {
     setResponseStatus(event, 304)
     return null
   }

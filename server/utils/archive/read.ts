@@ -19,16 +19,22 @@ export function runsQuery(db: Db) {
     .leftJoin('instruments as i', 'i.id', 'r.instrument_id').leftJoin('recipe_versions as v', 'v.id', 'r.recipe_version_id').leftJoin('recipes as q', 'q.id', 'v.recipe_id')
 }
 
+/** All of a run's row but what only its page shows: a list of them must not carry every result along. */
 export const summaryColumns = [
-  'r.*', 'u.name as owner_name', 't.name as target_name', 't.kind as target_kind', 'i.name as instrument_name', 'v.version as recipe_version', 'q.id as recipe_id', 'q.name as recipe_name', 'q.fork_of_version_id',
+  ...['id', 'club_id', 'owner_id', 'target_id', 'instrument_id', 'replaces_run_id', 'state', 'night', 'keep_fraction', 'keep_count', 'frames', 'fwhm_px', 'fwhm_err_px', 'scale_arcsec_per_px', 'review_state', 'created_at', 'filed_at', 'deleted_at'].map(name => `r.${name}`),
+  'u.name as owner_name', 't.name as target_name', 't.kind as target_kind', 'i.name as instrument_name', 'v.version as recipe_version', 'q.id as recipe_id', 'q.name as recipe_name', 'q.fork_of_version_id',
 ]
 
 export interface RunRow {
   id: string, club_id: string, owner_id: string, owner_name: string, target_id: string, target_name: string, target_kind: TargetKind, instrument_id: string | null, instrument_name: string | null
   recipe_id: string | null, recipe_name: string | null, recipe_version: number | null, fork_of_version_id: string | null, replaces_run_id: string | null
-  state: RunState, night: Date | string, note: string, result: string, keep_fraction: number, keep_count: number, frames: number, fwhm_px: number | null, fwhm_err_px: number | null
+  state: RunState, night: Date | string, keep_fraction: number, keep_count: number, frames: number, fwhm_px: number | null, fwhm_err_px: number | null
   scale_arcsec_per_px: number | null, review_state: ReviewState, created_at: Date, filed_at: Date | null, deleted_at: Date | null
 }
+
+/** The row of one run, with what its page shows. */
+export interface FullRunRow extends RunRow { note: string, result: string }
+export const fullColumns = [...summaryColumns, 'r.note', 'r.result']
 
 const dayOf = (night: Date | string) => (typeof night === 'string' ? night.slice(0, 10) : night.toISOString().slice(0, 10))
 
@@ -87,8 +93,8 @@ export async function listRuns(actor: Actor, query: z.output<typeof runQuery>): 
 }
 
 /** The run of this id that the actor may see, or 404 (a foreign one and a missing one alike). */
-export async function findRun(actor: Actor, id: string): Promise<RunRow> {
-  const row = await runsQuery(useDb()).where({ 'r.id': id, 'r.club_id': actor.clubId }).first(summaryColumns) as RunRow | undefined
+export async function findRun(actor: Actor, id: string): Promise<FullRunRow> {
+  const row = await runsQuery(useDb()).where({ 'r.id': id, 'r.club_id': actor.clubId }).first(fullColumns) as FullRunRow | undefined
   if (!row || !mayWith(actor, 'run.read', { ownerId: row.owner_id, clubId: row.club_id })) throw notFound()
   if (row.state !== 'filed' && row.owner_id !== actor.id) throw notFound()
   return row
@@ -109,13 +115,14 @@ export function rightsOf(actor: Actor, row: RunRow): RunRights {
 
 const guestRights = (scope: LinkScope): RunRights => ({ edit: false, remove: false, restore: false, share: false, askReview: false, remark: scope === 'remark', judge: false, answer: false, download: true })
 
-export function fileOf(row: FileRow, base: string): RunFile {
-  return { id: row.id, role: row.role as FileRole, name: row.name, sizeBytes: Number(row.size_bytes), sha256: row.sha256, type: row.type, state: row.state, problem: row.problem, url: `${base}/files/${row.id}` }
+/** `open` says that the asker may still bring bytes. */
+export function fileOf(row: FileRow, base: string, open: boolean): RunFile {
+  return { id: row.id, role: row.role as FileRole, name: row.name, sizeBytes: Number(row.size_bytes), sha256: row.sha256, type: row.type, state: row.state, problem: row.problem, url: `${base}/files/${row.id}`, uploadUrl: open && row.state === 'announced' && row.upload_id ? `/files/${row.upload_id}` : null }
 }
 
 interface Viewer { base: string, rights: RunRights, guest: { scope: LinkScope, expiresAt: string } | null }
 
-async function detail(row: RunRow, { base, rights, guest }: Viewer): Promise<RunDetail> {
+async function detail(row: FullRunRow, { base, rights, guest }: Viewer): Promise<RunDetail> {
   const db = useDb()
   const files = (await db('run_files').where({ run_id: row.id }).orderBy('role') as FileRow[]).filter(file => !guest || file.role !== 'raw')
   const thumbnail = files.find(file => file.role === 'thumbnail' && file.state === 'received')
@@ -125,7 +132,7 @@ async function detail(row: RunRow, { base, rights, guest }: Viewer): Promise<Run
   return {
     ...summary,
     ...(guest ? { replacesRunId: null } : {}),
-    note: row.note, result: JSON.parse(row.result) as RunResult, files: files.map(file => fileOf(file, base)), rights, replacedByRunId: replacedBy?.id ?? null,
+    note: row.note, result: JSON.parse(row.result) as RunResult, files: files.map(file => fileOf(file, base, !guest && row.state === 'announced')), rights, replacedByRunId: replacedBy?.id ?? null,
     ...await discussionOf(row.id),
     history: events.map(event => ({ at: event.at.toISOString(), actor: event.actor, action: event.action, detail: event.detail })),
     link: guest,
@@ -139,7 +146,7 @@ export async function runDetail(actor: Actor, id: string): Promise<RunDetail> {
 
 /** The run of a share link, without anything of the club beyond it. */
 export async function guestDetail(runId: string, token: string, link: { scope: LinkScope, expiresAt: string }): Promise<RunDetail> {
-  const row = await runsQuery(useDb()).where({ 'r.id': runId, 'r.state': 'filed' }).first(summaryColumns) as RunRow | undefined
+  const row = await runsQuery(useDb()).where({ 'r.id': runId, 'r.state': 'filed' }).first(fullColumns) as FullRunRow | undefined
   if (!row) throw notFound()
   return detail(row, { base: `/api/share/${token}`, rights: guestRights(link.scope), guest: link })
 }

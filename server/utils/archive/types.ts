@@ -10,12 +10,12 @@ export function typeOf(role: FileRole): string {
   return role === 'raw' ? 'application/octet-stream' : byRole[role]
 }
 
-/** A file name that is safe in a header and on a disk: no paths, no control characters, no text-direction marks. */
+/** A file name that is safe in a header and on a disk: no paths, no control characters, no text-direction marks, no half surrogates. */
 export function cleanName(name: string): string {
   const base = name.split(/[/\\]/).at(-1)!
   // eslint-disable-next-line no-control-regex -- control characters are what must go
-  const clean = base.normalize('NFC').replaceAll(/[\u0000-\u001f\u007f-\u009f\u200e\u200f\u202a-\u202e\u2066-\u2069]/g, '').replaceAll(/[<>:"|?*]/g, '_').trim().replace(/^\.+/, '')
-  return clean.slice(0, 200) || 'file'
+  const clean = base.normalize('NFC').replaceAll(/[\u0000-\u001f\u007f-\u009f\u061c\u200e\u200f\u2028-\u202e\u2066-\u2069\p{Cs}]/gu, '').replaceAll(/[<>:"|?*]/g, '_').trim().replace(/^\.+/, '')
+  return [...clean].slice(0, 200).join('') || 'file'
 }
 
 /** Content-Disposition as RFC 6266 has it: an ASCII name for old clients and the exact one in UTF-8. */

@@ -1,6 +1,6 @@
 /** Asking for a review, the mentors' queue, and the verdict. */
 import type { z } from 'zod'
-import type { Page } from '../../../shared/api/account'
+import type { Page, Role } from '../../../shared/api/account'
 import type { askReviewBody, Review, ReviewItem, verdictBody } from '../../../shared/api/archive'
 import { mayInClub } from '../access'
 import { runFor } from '../archive/change'
@@ -28,7 +28,10 @@ export async function askReview(actor: Actor, runId: string, { text }: z.output<
     if (!changed) throw problem(409, 'waiting', 'This run waits for a review already.')
     await trx('reviews').insert({ id, run_id: runId, asked_by: actor.id, asked_at: new Date(), text, verdict_text: '' })
     await audit(trx, { clubId: actor.clubId, userId: actor.id, actor: actor.name, action: 'asked for a review', kind: 'run', id: runId })
-    const mentors = await trx('memberships as m').join('users as u', 'u.id', 'm.user_id').where({ 'm.club_id': actor.clubId, 'm.role': 'mentor', 'm.active': true }).whereNot('u.id', actor.id).select('u.name', 'u.email')
+    const inRole = (role: Role) => trx('memberships as m').join('users as u', 'u.id', 'm.user_id').where({ 'm.club_id': actor.clubId, 'm.role': role, 'm.active': true }).whereNot('u.id', actor.id).select('u.name', 'u.email')
+    const mentors = await inRole('mentor')
+    // A club without a mentor (or whose only one asks) still has somebody who may judge.
+    if (mentors.length === 0) mentors.push(...await inRole('organiser'))
     for (const mentor of mentors) {
       await queueMail(trx, {
         clubId: actor.clubId, to: mentor.email, subject: `${actor.name} asks for a review of ${run.target_name}`,

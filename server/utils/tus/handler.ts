@@ -50,9 +50,10 @@ async function pass(event: H3Event) {
 async function mayCreate(event: H3Event, userId: string, uploadId: string): Promise<string | null> {
   if (uploadId !== '') return refuse(event, 404, 'Not found')
   const metadata = parseMetadata(getHeader(event, 'upload-metadata'))
-  const length = Number(getHeader(event, 'upload-length'))
+  const stated = getHeader(event, 'upload-length') ?? ''
+  const length = /^\d{1,15}$/.test(stated) ? Number(stated) : 0
   if (!metadata) return refuse(event, 400, 'The Upload-Metadata header cannot be read.')
-  if (!Number.isInteger(length) || length < 1) return refuse(event, 400, 'Upload-Length must be a positive number.')
+  if (length < 1) return refuse(event, 400, 'Upload-Length must be a positive number.')
   if (length > MAX_UPLOAD_BYTES) return refuse(event, 413, 'The file is too large.')
   const file = await useDb()('run_files as f').join('runs as r', 'r.id', 'f.run_id').where({ 'f.id': metadata.fileId ?? '', 'r.owner_id': userId, 'r.state': 'announced' }).first('f.size_bytes', 'f.state')
   if (!file) return refuse(event, 404, 'Not found')
@@ -63,9 +64,19 @@ async function mayCreate(event: H3Event, userId: string, uploadId: string): Prom
 
 async function mayTouch(event: H3Event, userId: string, uploadId: string, method: string): Promise<string | null> {
   const file = /^[A-Za-z0-9_-]{16,64}$/.test(uploadId)
-    ? await useDb()('run_files as f').join('runs as r', 'r.id', 'f.run_id').where({ 'f.upload_id': uploadId, 'r.owner_id': userId, 'r.state': 'announced' }).first('f.id')
+    ? await useDb()('run_files as f').join('runs as r', 'r.id', 'f.run_id').where({ 'f.upload_id': uploadId, 'r.owner_id': userId, 'r.state': 'announced' }).first('f.state', 'f.size_bytes')
     : undefined
   if (!file) return refuse(event, 404, 'Not found')
   if (method === 'PATCH' && getHeader(event, 'content-type') !== 'application/offset+octet-stream') return refuse(event, 415, 'A PATCH carries application/offset+octet-stream.')
-  return null
+  return file.state === 'received' ? ofFinished(event, method, String(file.size_bytes)) : null
+}
+
+/** A finished upload has left the tus server's folder; a client that missed the last answer is still told that it is complete. */
+function ofFinished(event: H3Event, method: string, size: string): string {
+  if (method === 'DELETE') return refuse(event, 403, 'This file is in the archive already; delete its run instead.')
+  if (method === 'PATCH' && getHeader(event, 'upload-offset') !== size) return refuse(event, 409, 'This upload is complete already.')
+  const text = refuse(event, method === 'HEAD' ? 200 : 204, '')
+  setResponseHeader(event, 'Upload-Offset', size)
+  if (method === 'HEAD') setResponseHeader(event, 'Upload-Length', size)
+  return text.trim()
 }

@@ -1,8 +1,8 @@
 /** The tus 1.0 server over a folder. Who may touch which upload is decided before it is asked, in handler.ts. */
 import { mkdirSync } from 'node:fs'
 import { FileStore } from '@tus/file-store'
-import { Metadata, Server } from '@tus/server'
-import { settleFile, type FileRow } from '../archive/receive'
+import { EVENTS, Metadata, Server } from '@tus/server'
+import { settleFile } from '../archive/receive'
 import { useDb } from '../db'
 import { uploadsFolder } from '../folders'
 import { newId } from '../tokens'
@@ -22,14 +22,14 @@ export function useTus(): Server {
     namingFunction: () => newId(),
     async onUploadCreate(_request, upload) {
       const fileId = upload.metadata?.fileId ?? ''
-      const changed = await useDb()('run_files').where({ id: fileId }).whereNot({ state: 'received' }).update({ upload_id: upload.id, state: 'announced', problem: null })
+      const changed = await useDb()('run_files').where({ id: fileId }).whereNot({ state: 'received' }).update({ upload_id: upload.id, state: 'announced', problem: null, received_at: null })
       if (changed !== 1) throw { status_code: 404, body: 'Not found\n' }
       return {}
     },
     async onUploadFinish(_request, upload) {
-      const row = await useDb()('run_files').where({ upload_id: upload.id }).first() as FileRow | undefined
+      const row = await useDb()('run_files').where({ upload_id: upload.id }).first('id')
       if (!row) throw { status_code: 404, body: 'Not found\n' }
-      const state = await settleFile({ ...row, size_bytes: Number(row.size_bytes) })
+      const state = await settleFile(row.id)
       if (state !== 'received') {
         const { problem } = await useDb()('run_files').where({ id: row.id }).first('problem')
         throw { status_code: 422, body: `${problem ?? 'The file was refused.'}\n` }
@@ -45,6 +45,9 @@ export function useTus(): Server {
       console.error('Upload:', error.message)
       return { status_code: 500, body: 'The upload could not be written. What has arrived is kept; try again in a moment.\n' }
     },
+  })
+  server.on(EVENTS.POST_TERMINATE, (_request, _response, id) => {
+    useDb()('run_files').where({ upload_id: id, state: 'announced' }).update({ upload_id: null }).catch(error => console.error('Upload:', error.message))
   })
   return server
 }

@@ -11,5 +11,5 @@ export default defineRoute({ access: 'anyone' }, async ({ event }) => {
   const link = await requireLink(event)
   const file = await useDb()('run_files').where({ id: idParam(event, 'fileId'), run_id: link.runId, state: 'received' }).whereNot({ role: 'raw' }).first() as FileRow | undefined
   if (!file) throw notFound()
-  return sendFile(event, file)
+  return sendFile(event, file, { guest: true })
 })
