@@ -5,10 +5,17 @@ import { inject } from 'vitest'
 export interface Answer<T = unknown> { status: number, headers: Record<string, string | string[] | undefined>, text: string, body: T }
 export interface Send { body?: unknown, headers?: Record<string, string>, localAddress?: string, raw?: Buffer }
 
+/** The server that this file's tests talk to: the one that all share, unless the file started its own. */
+let own: { url: string, databaseUrl: string, folder: string, log: string } | null = null
+export const currentServer = () => own ?? inject('lull')
+export function useOwnServer(server: NonNullable<typeof own>): void {
+  own = server
+}
+
 export class Client {
   cookie = ''
 
-  constructor(readonly base = inject('lull').url) {}
+  constructor(readonly base = currentServer().url) {}
 
   /** Never throws for a status; the cookie is kept as a browser would. */
   send<T = unknown>(method: string, path: string, { body, headers = {}, localAddress, raw }: Send = {}): Promise<Answer<T>> {

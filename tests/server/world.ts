@@ -1,10 +1,9 @@
 /** Two invented clubs with people in every role, made straight in the database; each call makes new ones. */
 import { randomBytes, scryptSync } from 'node:crypto'
 import type { Knex } from 'knex'
-import { inject } from 'vitest'
 import { openDatabase } from '../../server/utils/db'
 import type { Role } from '../../shared/api/account'
-import { Client } from './client'
+import { Client, currentServer } from './client'
 
 export const PASSWORD = 'a password for tests'
 /** PHC string format; N, r and p as the server makes them, so that signing in takes its usual road. */
@@ -20,7 +19,7 @@ export const newId = () => randomBytes(16).toString('base64url')
 export interface TestPerson { id: string, clubId: string, name: string, email: string, role: Role, client: Client }
 
 let db: Knex | null = null
-export const useTestDb = (): Knex => (db ??= openDatabase(inject('lull').databaseUrl))
+export const useTestDb = (): Knex => (db ??= openDatabase(currentServer().databaseUrl))
 export async function closeTestDb(): Promise<void> {
   await db?.destroy()
   db = null

@@ -20,6 +20,7 @@ const ARCSEC_PER_RADIAN_UM_MM = 206.264806
 export async function announce(actor: Actor, body: Announcement): Promise<string> {
   const { result } = body
   if (await recipeHash(result.recipe) !== result.recipeHash) throw problem(400, 'recipe-hash', 'The recipe and its hash do not belong together. Reload the bench and file the run again.')
+  if (!/^[0-9a-f]{64}$/.test(result.facts.fingerprint)) throw problem(400, 'fingerprint', 'The capture has no proper fingerprint. Open it again on the bench and file the run again.')
   const missing = requiredFileRoles.filter(role => body.files.filter(file => file.role === role).length !== 1)
   if (missing.length) throw problem(400, 'files', `These files must be announced once each: ${missing.join(', ')}.`)
   const already = new Map<string, boolean>()

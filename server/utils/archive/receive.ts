@@ -99,7 +99,7 @@ async function mendInfo(row: FileRow): Promise<void> {
   const id = row.upload_id!
   if (await sizeOf(uploadPath(id)) === null) return
   const info = `${uploadPath(id)}.json`
-  const known = await readFile(info, 'utf8').then(text => JSON.parse(text) as { id?: unknown, size?: unknown }, () => null)
+  const known = await readFile(info, 'utf8').then(text => JSON.parse(text) as { id?: unknown, size?: unknown } | null).catch(() => null)
   if (known?.id === id && known.size === Number(row.size_bytes)) return
   const text = JSON.stringify({ id, size: Number(row.size_bytes), offset: 0, metadata: { fileId: row.id }, creation_date: new Date().toISOString(), storage: { type: 'file', path: uploadPath(id) } })
   await writeFile(info, text)

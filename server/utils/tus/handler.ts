@@ -4,6 +4,7 @@
  * by the runs' own routes.
  */
 import { defineEventHandler, getHeader, setResponseHeader, setResponseStatus, type H3Event } from 'h3'
+import { idSchema } from '../../../shared/api/account'
 import { useDb } from '../db'
 import { asProblem } from '../errors'
 import { currentActor } from '../session'
@@ -55,7 +56,8 @@ async function mayCreate(event: H3Event, userId: string, uploadId: string): Prom
   if (!metadata) return refuse(event, 400, 'The Upload-Metadata header cannot be read.')
   if (length < 1) return refuse(event, 400, 'Upload-Length must be a positive number.')
   if (length > MAX_UPLOAD_BYTES) return refuse(event, 413, 'The file is too large.')
-  const file = await useDb()('run_files as f').join('runs as r', 'r.id', 'f.run_id').where({ 'f.id': metadata.fileId ?? '', 'r.owner_id': userId, 'r.state': 'announced' }).first('f.size_bytes', 'f.state')
+  const fileId = idSchema.safeParse(metadata.fileId)
+  const file = fileId.success && await useDb()('run_files as f').join('runs as r', 'r.id', 'f.run_id').where({ 'f.id': fileId.data, 'r.owner_id': userId, 'r.state': 'announced' }).first('f.size_bytes', 'f.state')
   if (!file) return refuse(event, 404, 'Not found')
   if (file.state === 'received') return refuse(event, 409, 'This file is in the archive already.')
   if (Number(file.size_bytes) !== length) return refuse(event, 400, `The file was announced with ${file.size_bytes} bytes, not ${length}.`)

@@ -82,6 +82,10 @@ const runRows: AccessRow[] = [
     method: 'GET', route: '/api/runs/:id/files/:fileId', expect: clubMembers(200),
     ask: async (world) => { const run = await makeRun(world); return { path: `/api/runs/${run.id}/files/${run.fileId}` } },
   },
+  {
+    method: 'HEAD', route: '/api/runs/:id/files/:fileId', expect: clubMembers(200),
+    ask: async (world) => { const run = await makeRun(world); return { path: `/api/runs/${run.id}/files/${run.fileId}` } },
+  },
   { method: 'GET', route: '/api/runs/:id/links', ask: ofRun('/links'), expect: ownerOnly(200) },
   { method: 'POST', route: '/api/runs/:id/links', ask: ofRun('/links', { scope: 'look', days: 7 }), expect: ownerOnly(201) },
   {
@@ -113,6 +117,8 @@ const shareRows: AccessRow[] = [
   { method: 'GET', route: '/api/share/:token', ask: shared(() => '', undefined, { withdrawn_at: new Date() }), expect: anyone(404) },
   { method: 'GET', route: '/api/share/:token/files/:fileId', ask: shared(run => `/files/${run.fileId}`), expect: anyone(200) },
   { method: 'GET', route: '/api/share/:token/files/:fileId', ask: shared(run => `/files/${run.rawId}`), expect: anyone(404) },
+  { method: 'HEAD', route: '/api/share/:token/files/:fileId', ask: shared(run => `/files/${run.fileId}`), expect: anyone(200) },
+  { method: 'HEAD', route: '/api/share/:token/files/:fileId', ask: shared(run => `/files/${run.rawId}`), expect: anyone(404) },
   {
     method: 'GET', route: '/api/share/:token/files/:fileId', expect: anyone(404),
     ask: async (world) => { const [one, other] = [await makeRun(world), await makeRun(world)]; return { path: `/api/share/${(await makeLink(world, one.id)).token}/files/${other.fileId}` } },
