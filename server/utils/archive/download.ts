@@ -52,6 +52,6 @@ export async function sendFile(event: H3Event, file: FileRow, { guest = false } 
   const { start, end } = range ?? { start: 0, end: size - 1 }
   setResponseHeaders(event, { 'Content-Length': end - start + 1, ...(range ? { 'Content-Range': `bytes ${start}-${end}/${size}` } : {}) })
   if (range) setResponseStatus(event, 206)
-  if (event.method === 'HEAD') return null
+  if (event.method === 'HEAD') return ''
   return sendStream(event, createReadStream(path, { start, end }))
 }

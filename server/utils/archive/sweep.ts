@@ -26,7 +26,8 @@ export async function sweepUploads(now = Date.now()): Promise<number> {
   for (const id of new Set((await namesIn(uploadsFolder())).map(name => name.replace(/\.json$/, '')))) {
     const touched = Math.max(await touchedAt(uploadPath(id)), await touchedAt(`${uploadPath(id)}.json`))
     const row = await useDb()('run_files').where({ upload_id: id }).first('id', 'state')
-    if (now - touched < (row ? ABANDONED_MS : GRACE_MS)) continue
+    // What a kill left of a file that lies in the store goes at once.
+    if (row?.state !== 'received' && now - touched < (row ? ABANDONED_MS : GRACE_MS)) continue
     if (row) await useDb()('run_files').where({ id: row.id, upload_id: id }).whereNot({ state: 'received' }).update({ upload_id: null })
     await forgetUpload(id)
     removed++
