@@ -8,35 +8,47 @@ export type DiffPiece =
   | { kind: 'changed', path: string, name: string, before: string, after: string }
   | { kind: 'removed' | 'added', text: string }
 
-/** Values are matched by path and the words between them by their order, so only what differs is marked. */
+/** Values are matched by path and words by themselves, along the longest common subsequence, so only what differs is marked. */
 export function recipeDiff(before: Recipe, after: Recipe, chosen: Chosen = {}): DiffPiece[] {
   const left = recipePieces(before, chosen)
   const right = recipePieces(after, chosen)
-  const key = (piece: Piece) => (piece.kind === 'value' ? `value:${piece.path}` : `text:${piece.text}`)
+  const common = commonLengths(left.map(keyOf), right.map(keyOf))
   const result: DiffPiece[] = []
   let i = 0
   let j = 0
-  const rest = (pieces: Piece[], from: number, wanted: string) => pieces.slice(from).some(piece => key(piece) === wanted)
   while (i < left.length || j < right.length) {
     const a = left[i]
     const b = right[j]
-    if (a && b && key(a) === key(b)) {
-      if (a.kind === 'value' && b.kind === 'value' && a.value !== b.value) result.push({ kind: 'changed', path: b.path, name: b.name, before: a.text, after: b.text })
-      else result.push({ kind: 'same', piece: b })
+    if (a && b && keyOf(a) === keyOf(b)) {
+      result.push(a.kind === 'value' && b.kind === 'value' && a.value !== b.value
+        ? { kind: 'changed', path: b.path, name: b.name, before: a.text, after: b.text }
+        : { kind: 'same', piece: b })
       i++
       j++
     }
-    else if (a && (!b || !rest(right, j, key(a)))) {
+    else if (a && (!b || common[i + 1]![j]! >= common[i]![j + 1]!)) {
       result.push({ kind: 'removed', text: a.text })
       i++
     }
-    else if (b) {
-      result.push({ kind: 'added', text: b.text })
+    else {
+      result.push({ kind: 'added', text: b!.text })
       j++
     }
-    else break
   }
   return result
+}
+
+const keyOf = (piece: Piece): string => (piece.kind === 'value' ? `value:${piece.path}` : `text:${piece.text}`)
+
+/** lengths[i][j]: the longest common subsequence of left from i on and right from j on. */
+function commonLengths(left: readonly string[], right: readonly string[]): number[][] {
+  const lengths = Array.from({ length: left.length + 1 }, () => new Array<number>(right.length + 1).fill(0))
+  for (let i = left.length - 1; i >= 0; i--) {
+    for (let j = right.length - 1; j >= 0; j--) {
+      lengths[i]![j] = left[i] === right[j] ? lengths[i + 1]![j + 1]! + 1 : Math.max(lengths[i + 1]![j]!, lengths[i]![j + 1]!)
+    }
+  }
+  return lengths
 }
 
 /** Names of the values that differ, for summaries such as "changes the keep fraction and the blur". */

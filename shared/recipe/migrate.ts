@@ -4,8 +4,31 @@ import { RECIPE_VERSION, recipeSchema } from '../schemas/recipe'
 
 type AnyRecipe = Record<string, unknown>
 
-/** migrations[v] turns a recipe of version v into one of version v + 1. Empty while version 1 is the first. */
-const migrations: Record<number, (recipe: AnyRecipe) => AnyRecipe> = {}
+/**
+ * What version 2 adds, with the values that do what version 1 did. Only what is missing is filled in, so that an
+ * old recipe gives the same result as before.
+ */
+const addedInVersion2: Record<string, AnyRecipe> = {}
+
+/** migrations[v] turns a recipe of version v into one of version v + 1. */
+const migrations: Record<number, (recipe: AnyRecipe) => AnyRecipe> = {
+  1: recipe => ({ ...withMissing(recipe, addedInVersion2), version: 2 }),
+}
+
+function isGroup(value: unknown): value is AnyRecipe {
+  return typeof value === 'object' && value !== null && !Array.isArray(value)
+}
+
+/** A copy with the fields of `additions` that it lacks, group by group. */
+function withMissing(recipe: AnyRecipe, additions: AnyRecipe): AnyRecipe {
+  const copy: AnyRecipe = { ...recipe }
+  for (const [name, value] of Object.entries(additions)) {
+    const own = copy[name]
+    if (own === undefined) copy[name] = structuredClone(value)
+    else if (isGroup(own) && isGroup(value)) copy[name] = withMissing(own, value)
+  }
+  return copy
+}
 
 /** Thrown for something that is not a recipe; the message is for the user. */
 export class RecipeError extends Error {

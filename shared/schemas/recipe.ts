@@ -4,7 +4,7 @@
  */
 import { z } from 'zod'
 
-export const RECIPE_VERSION = 1
+export const RECIPE_VERSION = 2
 
 /** transfer: how much of the reference's detail a frame carries; known after registration, for extended targets. */
 export const scoreMeasures = ['laplacian', 'peak', 'transfer'] as const

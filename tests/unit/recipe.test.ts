@@ -38,6 +38,12 @@ describe('the paragraph', () => {
 })
 
 describe('reading recipes', () => {
+  it('reads a recipe of version 1, whose values stay as they are', () => {
+    const { version, ...rest } = structuredClone(defaultRecipe)
+    expect(version).toBeGreaterThan(1)
+    const old = { ...rest, version: 1, keep: { fraction: 0.03 } }
+    expect(readRecipe(old)).toMatchObject({ version, keep: { fraction: 0.03 }, score: rest.score })
+  })
   it('accepts its own and says what is wrong with others', () => {
     expect(readRecipe(structuredClone(defaultRecipe))).toEqual(defaultRecipe)
     expect(() => readRecipe([])).toThrow(RecipeError)

@@ -1,7 +1,7 @@
 /** Runs as they are answered: summaries, lists and details. */
 import type { z } from 'zod'
 import type { LinkScope, RunDetail, RunFile, RunPage, RunRights, RunSummary, runQuery } from '../../../shared/api/archive'
-import type { FileRole, ReviewState, RunResult, RunState } from '../../../shared/schemas/run'
+import type { FileRole, ReviewState, RunState } from '../../../shared/schemas/run'
 import type { TargetKind } from '../../../shared/schemas/capture'
 import { mayWith } from '../access'
 import type { Db } from '../db'
@@ -10,6 +10,7 @@ import { notFound } from '../errors'
 import type { Actor } from '../session'
 import { discussionOf } from '../review/discussion'
 import type { FileRow } from './receive'
+import { storedResult } from './result'
 
 /** Deleted runs can be restored for so long. */
 export const RESTORE_MS = 30 * 86_400_000
@@ -132,7 +133,7 @@ async function detail(row: FullRunRow, { base, rights, guest }: Viewer): Promise
   return {
     ...summary,
     ...(guest ? { replacesRunId: null } : {}),
-    note: row.note, result: JSON.parse(row.result) as RunResult, files: files.map(file => fileOf(file, base, !guest && row.state === 'announced')), rights, replacedByRunId: replacedBy?.id ?? null,
+    note: row.note, result: storedResult(row.result), files: files.map(file => fileOf(file, base, !guest && row.state === 'announced')), rights, replacedByRunId: replacedBy?.id ?? null,
     ...await discussionOf(row.id),
     history: events.map(event => ({ at: event.at.toISOString(), actor: event.actor, action: event.action, detail: event.detail })),
     link: guest,

@@ -4,8 +4,8 @@ import type { Pin, pinBody, Proposal, proposalBody, Remark, remarkBody, Review }
 import { recipeHash } from '../../../shared/recipe/canonical'
 import { changedValues } from '../../../shared/recipe/diff'
 import { readRecipe } from '../../../shared/recipe/migrate'
-import type { RunResult } from '../../../shared/schemas/run'
 import { runFor } from '../archive/change'
+import { storedResult } from '../archive/result'
 import { audit } from '../audit'
 import type { Db } from '../db'
 import { useDb } from '../db'
@@ -51,7 +51,7 @@ export async function addPin(author: Author, runId: string, { x, y, text }: z.ou
     // The run's row is the lock that numbers pins one after another.
     const run = await trx('runs').where({ id: runId, state: 'filed' }).forUpdate().first('result')
     if (!run) throw notFound()
-    const { width, height } = (JSON.parse(run.result) as RunResult).ladder
+    const { width, height } = storedResult(run.result).ladder
     if (x > width - 0.5 || y > height - 0.5) throw problem(400, 'outside', 'This place is outside of the image.', { field: 'x' })
     const { top } = await trx('pins').where({ run_id: runId }).max({ top: 'number' }).first() as { top: number | null }
     const row = { id: newId(), run_id: runId, author_id: author.userId, guest_name: author.guestName, at: new Date(), text, number: (top ?? 0) + 1, x, y }
@@ -75,7 +75,7 @@ export async function addRemark(author: Author, runId: string, { pinId, text }: 
 export async function propose(actor: Actor, runId: string, { recipe, text }: z.output<typeof proposalBody>): Promise<Proposal> {
   const run = await runFor(actor, runId, 'run.propose')
   if (run.state !== 'filed') throw notFound()
-  const before = (JSON.parse(run.result) as RunResult).recipe
+  const before = storedResult(run.result).recipe
   if (await recipeHash(recipe) === await recipeHash(before)) throw problem(400, 'no-change', 'The proposal is the recipe as it is: change a value first.')
   const row = { id: newId(), run_id: runId, author_id: actor.id, guest_name: null, at: new Date(), text, recipe: JSON.stringify(recipe) }
   await useDb().transaction(async (trx) => {
