@@ -25,7 +25,6 @@ export function useFiledRun(run: Ref<RunDetail>) {
   let core: ReturnType<typeof useGuestCore> | null = null
   let busy = false
   let asked = -1
-  let opened = false
 
   const count = computed(() => counts.value[rung.value] ?? run.value.keep.count)
   const fraction = computed(() => count.value / Math.max(1, run.value.result.ranked))
@@ -62,8 +61,8 @@ export function useFiledRun(run: Ref<RunDetail>) {
     core = useGuestCore()
     try {
       const answer = await core.open({ ladderUrl: ladder.url, ladderBytes: ladder.sizeBytes, framesUrl: frames.url, averageUrl: fileOf('average')?.url ?? null, stackUrl: fileOf('stack')?.url ?? null, result: toRaw(run.value.result) })
-      const wanted = opened ? count.value : run.value.keep.count
-      opened = true
+      // Whoever moved the slider before the ladder was there keeps what was wished for.
+      const wanted = count.value
       counts.value = answer.counts
       columns.value = answer.columns
       rung.value = rungOf(answer.counts, wanted)

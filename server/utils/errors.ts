@@ -15,6 +15,7 @@ export const texts = {
   emailTaken: 'There is an account with this e-mail address already. Sign in, or ask for a new password.',
   wrongPassword: 'The current password is not right.',
   lastOrganiser: 'A club needs an organiser: make somebody else organiser first.',
+  tooLarge: 'The request is too large.',
   unwell: 'The database does not answer at the moment. Nothing was changed; try again in a minute.',
   server: 'Something went wrong on the server. Nothing was changed; try again in a moment.',
 } as const

@@ -4,7 +4,7 @@
  *     export default defineRoute({ access: 'club.write', body: clubBody }, ({ actor, body }) => changeClub(actor, body))
  */
 import type { EventHandler, H3Event } from 'h3'
-import { defineEventHandler, getQuery, readBody, setResponseHeader } from 'h3'
+import { defineEventHandler, getQuery, setResponseHeader } from 'h3'
 import type { output, ZodType } from 'zod'
 import type { ClubAction } from './access'
 import { mayInClub } from './access'
@@ -40,7 +40,7 @@ export function defineRoute<A extends Access, B extends ZodType | undefined = un
       const actor = options.access === 'anyone' ? await currentActor(event) : await requireActor(event)
       if (options.access !== 'anyone' && options.access !== 'signed-in' && !mayInClub(actor!, options.access as ClubAction)) throw problem(403, 'not-allowed', texts.notAllowed)
       const length = Number(event.node.req.headers['content-length'] ?? 0)
-      if (length > MAX_BODY_BYTES) throw problem(413, 'too-large', 'The request is too large.')
+      if (length > MAX_BODY_BYTES) throw problem(413, 'too-large', texts.tooLarge)
       const body = options.body ? options.body.parse(await readJson(event)) : undefined
       const query = options.query ? options.query.parse(getQuery(event)) : undefined
       return await handle({ event, actor, body, query } as Context<A, B, Q>)
@@ -52,10 +52,28 @@ export function defineRoute<A extends Access, B extends ZodType | undefined = un
 }
 
 async function readJson(event: H3Event): Promise<unknown> {
+  const text = await readText(event)
+  if (text.trim() === '') return {}
   try {
-    return await readBody(event) ?? {}
+    return JSON.parse(text) ?? {}
   }
   catch {
     throw problem(400, 'invalid', 'The request is not readable as JSON.')
   }
+}
+
+/** The body, stopped at the limit also where no length was announced (a chunked request). */
+async function readText(event: H3Event): Promise<string> {
+  const parts: Buffer[] = []
+  let size = 0
+  // The stream is not torn down when the loop is left: the refusal still has to reach the sender over its connection.
+  for await (const part of event.node.req.iterator({ destroyOnReturn: false }) as AsyncIterable<Buffer>) {
+    size += part.length
+    if (size > MAX_BODY_BYTES) {
+      setResponseHeader(event, 'Connection', 'close')
+      throw problem(413, 'too-large', texts.tooLarge)
+    }
+    parts.push(part)
+  }
+  return Buffer.concat(parts).toString('utf8')
 }

@@ -70,6 +70,8 @@ export interface RunSummary {
   keep: { fraction: number, count: number }, frames: number
   fwhmPx: number | null, fwhmErrPx: number | null, scaleArcsecPerPx: number | null
   review: ReviewState, thumbnailUrl: string | null, replacesRunId: string | null
+  /** The newest filed run that was made to replace this one. */
+  replacedByRunId: string | null
 }
 
 /** What the asker may do with this run: computed by the server, so that a screen never guesses. */
@@ -77,7 +79,6 @@ export interface RunRights { edit: boolean, remove: boolean, restore: boolean, s
 
 export interface RunDetail extends RunSummary {
   note: string, result: RunResult, files: RunFile[], rights: RunRights
-  replacedByRunId: string | null
   pins: Pin[], remarks: Remark[], proposals: Proposal[], reviews: Review[]
   history: { at: string, actor: string, action: string, detail: string }[]
   /** Set for a guest of a link. */

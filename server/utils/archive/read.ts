@@ -39,14 +39,14 @@ export const fullColumns = [...summaryColumns, 'r.note', 'r.result']
 
 const dayOf = (night: Date | string) => (typeof night === 'string' ? night.slice(0, 10) : night.toISOString().slice(0, 10))
 
-export function summaryOf(row: RunRow, thumbnailUrl: string | null): RunSummary {
+export function summaryOf(row: RunRow, thumbnailUrl: string | null, replacedByRunId: string | null): RunSummary {
   return {
     id: row.id, state: row.state, target: { id: row.target_id, name: row.target_name, kind: row.target_kind }, owner: { id: row.owner_id, name: row.owner_name },
     instrument: row.instrument_id ? { id: row.instrument_id, name: row.instrument_name! } : null,
     night: dayOf(row.night), filedAt: row.filed_at?.toISOString() ?? null, createdAt: row.created_at.toISOString(), deletedAt: row.deleted_at?.toISOString() ?? null,
     recipe: row.recipe_id ? { id: row.recipe_id, name: row.recipe_name!, version: row.recipe_version!, forked: row.fork_of_version_id !== null } : null,
     keep: { fraction: row.keep_fraction, count: row.keep_count }, frames: row.frames,
-    fwhmPx: row.fwhm_px, fwhmErrPx: row.fwhm_err_px, scaleArcsecPerPx: row.scale_arcsec_per_px, review: row.review_state, thumbnailUrl, replacesRunId: row.replaces_run_id,
+    fwhmPx: row.fwhm_px, fwhmErrPx: row.fwhm_err_px, scaleArcsecPerPx: row.scale_arcsec_per_px, review: row.review_state, thumbnailUrl, replacesRunId: row.replaces_run_id, replacedByRunId,
   }
 }
 
@@ -55,7 +55,14 @@ export async function summariesOf(rows: RunRow[]): Promise<RunSummary[]> {
   if (rows.length === 0) return []
   const thumbnails = await useDb()('run_files').whereIn('run_id', rows.map(row => row.id)).where({ role: 'thumbnail', state: 'received' }).select('id', 'run_id')
   const byRun = new Map(thumbnails.map(file => [file.run_id as string, file.id as string]))
-  return rows.map(row => summaryOf(row, byRun.has(row.id) ? `/api/runs/${row.id}/files/${byRun.get(row.id)}` : null))
+  const replacedBy = await replacementsOf(rows.map(row => row.id))
+  return rows.map(row => summaryOf(row, byRun.has(row.id) ? `/api/runs/${row.id}/files/${byRun.get(row.id)}` : null, replacedBy.get(row.id) ?? null))
+}
+
+/** The newest filed run that replaces each of these. */
+async function replacementsOf(ids: string[]): Promise<Map<string, string>> {
+  const newer = await useDb()('runs').whereIn('replaces_run_id', ids).where({ state: 'filed' }).orderBy([{ column: 'filed_at' }, { column: 'id' }]).select('id', 'replaces_run_id')
+  return new Map(newer.map(run => [run.replaces_run_id as string, run.id as string]))
 }
 
 const sortColumns = { night: 'r.night', target: 't.name', owner: 'u.name', keep: 'r.keep_fraction', fwhm: 'r.fwhm_px', filed: 'r.filed_at', review: 'r.review_state' } as const
@@ -127,13 +134,13 @@ async function detail(row: FullRunRow, { base, rights, guest }: Viewer): Promise
   const db = useDb()
   const files = (await db('run_files').where({ run_id: row.id }).orderBy('role') as FileRow[]).filter(file => !guest || file.role !== 'raw')
   const thumbnail = files.find(file => file.role === 'thumbnail' && file.state === 'received')
-  const replacedBy = guest ? null : await db('runs').where({ replaces_run_id: row.id, state: 'filed' }).orderBy('filed_at', 'desc').first('id')
+  const replacedBy = guest ? null : (await replacementsOf([row.id])).get(row.id) ?? null
   const events = guest ? [] : await db('audit_events').where({ subject_kind: 'run', subject_id: row.id }).orderBy([{ column: 'at' }, { column: 'id' }]).limit(200)
-  const summary = summaryOf(row, thumbnail ? `${base}/files/${thumbnail.id}` : null)
+  const summary = summaryOf(row, thumbnail ? `${base}/files/${thumbnail.id}` : null, replacedBy)
   return {
     ...summary,
     ...(guest ? { replacesRunId: null } : {}),
-    note: row.note, result: storedResult(row.result), files: files.map(file => fileOf(file, base, !guest && row.state === 'announced')), rights, replacedByRunId: replacedBy?.id ?? null,
+    note: row.note, result: storedResult(row.result), files: files.map(file => fileOf(file, base, !guest && row.state === 'announced')), rights,
     ...await discussionOf(row.id),
     history: events.map(event => ({ at: event.at.toISOString(), actor: event.actor, action: event.action, detail: event.detail })),
     link: guest,
