@@ -29,10 +29,13 @@ export const stackFiguresSchema = z.object({
   /** Peak over noise. */
   signalToNoise: z.number().nonnegative(),
   fwhmPx: z.number().positive().nullable(),
-  /** Standard error of fwhmPx. */
+  /** Standard error of fwhmPx from the scatter of the frames; null where too few frames tell it. */
   fwhmErrPx: z.number().nonnegative().nullable(),
   /** Peak over the diffraction-limited peak of the same flux; only with known optics. */
   strehl: z.number().min(0).max(2).nullable(),
+  /** Standard errors of strehl and of noise, found like fwhmErrPx; absent in results of older versions. */
+  strehlErr: z.number().nonnegative().nullable().optional(),
+  noiseErr: z.number().nonnegative().nullable().optional(),
 })
 
 export const ladderInfoSchema = z.object({

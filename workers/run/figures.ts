@@ -1,54 +1,161 @@
 import type { Optics, StackImage } from '../api'
 import { halvesNoise, stackFigures, stackLuminance } from '../score/figures'
+import { halfWidth } from '../score/halfwidth'
+import { createScorer, emptyScore } from '../score/scorer'
 import type { StackFigures } from '../../shared/schemas/run'
+import type { Ladder } from './ladder-pass'
+import { boxAbout, boxLuminance, meanOfBest, pairedChanges, starScatter, type Box } from './scatter'
 import type { Stacker } from './stacker'
 import type { Surveyed } from './survey-frames'
 
+export interface FigurerInput {
+  stacker: Stacker
+  ladder: Ladder
+  /** Ranked frames, best first. */
+  order: Int32Array
+  /** Peak over brightness of each frame. */
+  peak: Float64Array
+  surveyed: Surveyed
+  optics: Optics | null
+}
+
+/** Side of the box about a star in which its scatter is looked at, px. */
+const BOX = 96
+
 /** Figures of stacks of one run; the noise comes from half stacks, so that nothing that was aligned to itself is counted as signal. */
 export class Figurer {
-  readonly #stacker: Stacker
-  readonly #surveyed: Surveyed
-  readonly #optics: Optics | null
-  #noise = new Map<number, number>()
+  readonly #in: FigurerInput
+  readonly #noise = new Map<number, { noise: number, error: number | null }>()
+  readonly #widths = new Map<number, { lnFwhm: number, score: number }>()
 
-  constructor(stacker: Stacker, surveyed: Surveyed, optics: Optics | null) {
-    this.#stacker = stacker
-    this.#surveyed = surveyed
-    this.#optics = optics
+  constructor(input: FigurerInput) {
+    this.#in = input
   }
 
   of(image: StackImage): StackFigures {
-    return this.#figures(image, image.count / Math.max(1, this.#stacker.ranked), this.#noiseOf(image.count))
+    const { noise, error } = this.#noiseOf(image.count)
+    const figures = this.#figures(image, image.count / Math.max(1, this.#in.stacker.ranked), noise)
+    return { ...figures, noiseErr: error, ...this.#starErrors(image, figures) }
   }
 
   /** Figures of the plain unregistered average of `frames` frames; its noise is that of one frame over their root. */
   ofAverage(image: StackImage, frames: number): StackFigures {
-    return this.#figures(image, 1, this.#surveyed.survey.noise / Math.sqrt(Math.max(1, frames)))
+    return { ...this.#figures(image, 1, this.#in.surveyed.survey.noise / Math.sqrt(Math.max(1, frames))), fwhmErrPx: null, strehlErr: null, noiseErr: null }
   }
 
   #figures({ samples, planes, count }: StackImage, fraction: number, noise: number): StackFigures {
-    const { plan, score } = this.#surveyed
+    const { plan, score } = this.#in.surveyed
     const mosaic = planes === 1 && plan.mosaic !== 'none'
-    return stackFigures({ stack: samples, planes, mosaic, noise, count, fraction, plan: score, optics: this.#optics })
+    return stackFigures({ stack: samples, planes, mosaic, noise, count, fraction, plan: score, optics: this.#in.optics })
+  }
+
+  /** Standard errors of a star's width and Strehl ratio; see scatter.ts. Null where too few frames tell them. */
+  #starErrors(image: StackImage, { fwhmPx, strehl }: StackFigures): { fwhmErrPx: number | null, strehlErr: number | null } {
+    const none = { fwhmErrPx: null, strehlErr: null }
+    const { stacker, ladder, order, peak } = this.#in
+    if (fwhmPx === null || ladder.counts.length === 0) return none
+    const rung = stacker.rungBelow(image.count)
+    const best = meanOfBest(order, peak, image.count)
+    if (best.error === null) return none
+    const { width, height, planes } = ladder
+    const at = this.#place(image.samples, planes)
+    const box = boxAbout(at.x, at.y, BOX, width, height)
+    const mean = boxLuminance(image.samples, planes, width, height, box)
+    const scatter = starScatter(mean, box, pairedChanges(ladder, rung, box, (count, every) => stacker.coverage(count, every)), at.x, at.y, at.background, this.#lightIn(box))
+    if (scatter.fwhm === null || scatter.lnShare === null) return none
+    const fewer = Math.sqrt(stacker.countOf(rung) / image.count)
+    const slope = this.#widthByScore(image.count)
+    return {
+      fwhmErrPx: Math.hypot(fewer * scatter.fwhm, fwhmPx * slope * best.error),
+      strehlErr: strehl === null ? null : strehl * Math.hypot(fewer * scatter.lnShare, best.error),
+    }
+  }
+
+  /** Measures a star's light in a box as the Strehl ratio's own denominator does. */
+  #lightIn(box: Box): (image: Float32Array) => number {
+    const { score: plan } = this.#in.surveyed
+    const centre = { x: plan.centre.x - box.x0, y: plan.centre.y - box.y0 }
+    const scorer = createScorer({ ...plan, width: box.width, height: box.height, centre, windowPx: Math.min(512, 2 * plan.windowPx), noise: 0, guide: null })
+    const score = emptyScore()
+    return (image) => {
+      scorer.score(image, 0, score)
+      return score.flux
+    }
+  }
+
+  /** Change of the logarithm of the width with that of the mean score, from two rungs an octave apart. */
+  #widthByScore(count: number): number {
+    const { stacker, ladder } = this.#in
+    const nearest = (wanted: number) => ladder.counts.reduce((best, n, k) => (Math.abs(n - wanted) < Math.abs(ladder.counts[best]! - wanted) ? k : best), 0)
+    const a = this.#widthOf(nearest(count))
+    const b = this.#widthOf(nearest(2 * count <= stacker.ranked ? 2 * count : count / 2))
+    if (!a || !b || Math.abs(a.score - b.score) < 1e-3) return 0
+    return (a.lnFwhm - b.lnFwhm) / (a.score - b.score)
+  }
+
+  #widthOf(rung: number): { lnFwhm: number, score: number } | null {
+    const known = this.#widths.get(rung)
+    if (known) return known
+    const { ladder: { counts, sums, scale, planes, width, height }, order, peak } = this.#in
+    const count = counts[rung]!
+    const samples = Float32Array.from(sums[rung]!, sum => sum / (count * scale))
+    const at = this.#place(samples, planes)
+    const box: Box = boxAbout(at.x, at.y, BOX, width, height)
+    const { fwhm } = halfWidth(boxLuminance(samples, planes, width, height, box), box.width, box.height, at.x - box.x0, at.y - box.y0, at.background, 0)
+    const { mean } = meanOfBest(order, peak, count)
+    if (fwhm === null || !(mean > 0)) return null
+    const found = { lnFwhm: Math.log(fwhm), score: Math.log(mean) }
+    this.#widths.set(rung, found)
+    return found
+  }
+
+  /** Where the star is in a stack, its background and its light. */
+  #place(samples: Float32Array, planes: 1 | 3) {
+    const { score: plan } = this.#in.surveyed
+    const score = emptyScore()
+    createScorer({ ...plan, noise: 0, guide: null }).score(stackLuminance(samples, planes, false, plan.width, plan.height), 0, score)
+    return score
   }
 
   /** Noise of the mean of `count` frames: from the halves of the rung below, scaled by the root of the counts. */
-  #noiseOf(count: number): number {
-    const rung = this.#stacker.rungBelow(count)
+  #noiseOf(count: number): { noise: number, error: number | null } {
+    const { stacker, surveyed } = this.#in
+    const rung = stacker.rungBelow(count)
     const known = this.#noise.get(rung)
-    const at = this.#stacker.countOf(rung)
-    const noise = known ?? this.#measure(rung) ?? this.#surveyed.survey.noise / Math.sqrt(Math.max(1, at))
-    this.#noise.set(rung, noise)
-    return noise * Math.sqrt(at / Math.max(1, count))
+    const at = stacker.countOf(rung)
+    const found = known ?? this.#measure(rung) ?? { noise: surveyed.survey.noise / Math.sqrt(Math.max(1, at)), error: null }
+    this.#noise.set(rung, found)
+    const factor = Math.sqrt(at / Math.max(1, count))
+    return { noise: found.noise * factor, error: found.error === null ? null : found.error * factor }
   }
 
   /** Half the robust scatter of the difference of two half stacks; null where there are no halves. */
-  #measure(rung: number): number | null {
-    const halves = this.#stacker.halves(rung)
+  #measure(rung: number): { noise: number, error: number | null } | null {
+    const halves = this.#in.stacker.halves(rung)
     if (!halves) return null
-    const { width, height } = this.#surveyed.plan
+    const { width, height } = this.#in.surveyed.plan
     const planes = halves[0].length === width * height ? 1 : 3
     const [a, b] = halves.map(half => stackLuminance(half, planes, false, width, height)) as [Float32Array, Float32Array]
-    return halvesNoise(a, b)
+    return { noise: halvesNoise(a, b), error: noiseError(a, b, width, height) }
   }
+}
+
+/** Interleaved sets of squares of TILE px; each set covers the whole image evenly. */
+const SETS = 8
+const TILE = 4
+
+/** Standard error of halvesNoise: the scatter between eight interleaved sets of small squares, each with its own noise, over the root of eight. */
+export function noiseError(a: Float32Array, b: Float32Array, width: number, height: number): number | null {
+  const sets: [number[], number[]][] = Array.from({ length: SETS }, () => [[], []])
+  for (let y = 0; y < height; y++) {
+    for (let x = 0; x < width; x++) {
+      const [one, other] = sets[(Math.floor(x / TILE) + 3 * Math.floor(y / TILE)) % SETS]!
+      one.push(a[y * width + x]!)
+      other.push(b[y * width + x]!)
+    }
+  }
+  if (width * height < SETS * 64) return null
+  const found = sets.map(([one, other]) => halvesNoise(Float32Array.from(one), Float32Array.from(other)))
+  const mean = found.reduce((sum, v) => sum + v, 0) / SETS
+  return Math.sqrt(found.reduce((sum, v) => sum + (v - mean) ** 2, 0) / (SETS - 1) / SETS)
 }
