@@ -3,6 +3,7 @@ import { halvesNoise, stackFigures, stackLuminance } from '../score/figures'
 import { halfWidth } from '../score/halfwidth'
 import { createScorer, emptyScore } from '../score/scorer'
 import type { StackFigures } from '../../shared/schemas/run'
+import { steadyLn } from '../../shared/steadymath'
 import type { Ladder } from './ladder-pass'
 import { boxAbout, boxLuminance, meanOfBest, pairedChanges, starScatter, type Box } from './scatter'
 import type { Stacker } from './stacker'
@@ -18,6 +19,9 @@ export interface FigurerInput {
   surveyed: Surveyed
   optics: Optics | null
 }
+
+/** Root of the sum of two squares. */
+const both = (a: number, b: number): number => Math.sqrt(a * a + b * b)
 
 /** Side of the box about a star in which its scatter is looked at, px. */
 const BOX = 96
@@ -66,8 +70,8 @@ export class Figurer {
     const fewer = Math.sqrt(stacker.countOf(rung) / image.count)
     const slope = this.#widthByScore(image.count)
     return {
-      fwhmErrPx: Math.hypot(fewer * scatter.fwhm, fwhmPx * slope * best.error),
-      strehlErr: strehl === null ? null : strehl * Math.hypot(fewer * scatter.lnShare, best.error),
+      fwhmErrPx: both(fewer * scatter.fwhm, fwhmPx * slope * best.error),
+      strehlErr: strehl === null ? null : strehl * both(fewer * scatter.lnShare, best.error),
     }
   }
 
@@ -104,7 +108,7 @@ export class Figurer {
     const { fwhm } = halfWidth(boxLuminance(samples, planes, width, height, box), box.width, box.height, at.x - box.x0, at.y - box.y0, at.background, 0)
     const { mean } = meanOfBest(order, peak, count)
     if (fwhm === null || !(mean > 0)) return null
-    const found = { lnFwhm: Math.log(fwhm), score: Math.log(mean) }
+    const found = { lnFwhm: steadyLn(fwhm), score: steadyLn(mean) }
     this.#widths.set(rung, found)
     return found
   }

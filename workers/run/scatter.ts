@@ -12,6 +12,7 @@
  *    not deceive): the error of the mean score; and the rungs say what a change of the score does to the figure.
  */
 import { keepCount } from '../../shared/schemas/run'
+import { steadyLn } from '../../shared/steadymath'
 import { stackLuminance } from '../score/figures'
 import { halfWidth } from '../score/halfwidth'
 import type { Ladder } from './ladder-pass'
@@ -55,7 +56,7 @@ export function pairedChanges(ladder: Ladder, rung: number, box: Box, coverage: 
   })
   const nothing = () => new Float32Array(box.width * box.height)
   const changes: Float32Array[] = []
-  let before = { sum: nothing(), even: nothing(), all: nothing(), half: nothing() }
+  let before: Record<'sum' | 'even' | 'all' | 'half', Float32Array> = { sum: nothing(), even: nothing(), all: nothing(), half: nothing() }
   let first = 0
   for (let k = 0; k <= rung; k++) {
     const last = counts[k]!
@@ -86,7 +87,7 @@ export function starScatter(mean: Float32Array, box: Box, changes: readonly Floa
   const of = (change: Float32Array, sign: 1 | -1) => {
     const image = mean.map((value, i) => value + sign * change[i]!)
     const found = halfWidth(image, width, height, x - box.x0, y - box.y0, background, 0)
-    return { fwhm: found.fwhm ?? NaN, lnShare: Math.log(found.peak / lightOf(image)) }
+    return { fwhm: found.fwhm ?? NaN, lnShare: steadyLn(found.peak / lightOf(image)) }
   }
   let fwhm = 0
   let lnShare = 0
