@@ -17,9 +17,11 @@ export interface HeadlessInput {
   recipe: Recipe
   workers: number
   blockFrames: number | undefined
+  /** A drift capture to calibrate by instead of a capture to stack. */
+  drift: { declinationDeg: number, parity: 'normal' | 'mirrored' | null } | null
 }
 
-const USAGE = 'Usage: npm run --silent headless -- CAPTURE --out DIR [--recipe FILE.json] [--keep 0.1] [--set path=value …] [--workers N]'
+const USAGE = 'Usage: npm run --silent headless -- CAPTURE --out DIR [--recipe FILE.json] [--keep 0.1] [--set path=value …] [--workers N], or -- CAPTURE --drift --dec DEG [--parity normal|mirrored] --out DIR'
 
 export async function readInput(argv: string[]): Promise<HeadlessInput> {
   const { values, positionals } = parse(argv)
@@ -30,6 +32,7 @@ export async function readInput(argv: string[]): Promise<HeadlessInput> {
     out: await freeFolder(resolve(values.out)),
     recipe: await recipeOf(values),
     workers: whole(values.workers ?? '1', '--workers', 1, 64),
+    drift: driftOf(values),
     blockFrames: values['block-frames'] === undefined ? undefined : whole(values['block-frames'], '--block-frames', 1, 100_000),
   }
 }
@@ -41,12 +44,25 @@ function parse(argv: string[]) {
       options: {
         out: { type: 'string' }, recipe: { type: 'string' }, keep: { type: 'string' }, set: { type: 'string', multiple: true },
         workers: { type: 'string' }, 'block-frames': { type: 'string' },
+        drift: { type: 'boolean' }, dec: { type: 'string' }, parity: { type: 'string' },
       },
     })
   }
   catch (reason) {
     throw new InputError(`${(reason as Error).message} ${USAGE}`)
   }
+}
+
+function driftOf({ drift, dec, parity }: { drift?: boolean, dec?: string, parity?: string }): HeadlessInput['drift'] {
+  if (!drift) {
+    if (dec !== undefined || parity !== undefined) throw new InputError(`--dec and --parity belong to --drift. ${USAGE}`)
+    return null
+  }
+  if (dec === undefined) throw new InputError(`A drift needs the declination of its star: --dec DEG. ${USAGE}`)
+  const declinationDeg = number(dec)
+  if (Math.abs(declinationDeg) > 90) throw new InputError(`A declination lies between −90° and 90°; "${dec}" does not.`)
+  if (parity !== undefined && parity !== 'normal' && parity !== 'mirrored') throw new InputError(`--parity is "normal" or "mirrored", not "${parity}".`)
+  return { declinationDeg, parity: parity ?? null }
 }
 
 /** Results replace those of an earlier run, but never anything else. */

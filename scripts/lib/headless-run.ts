@@ -10,6 +10,7 @@ import { runResult } from '../../workers/run/result'
 import { displayRange } from '../../workers/run/stretch'
 import { captureSources } from './file-source'
 import { InputError, readInput, type HeadlessInput } from './headless-input'
+import { calibrationJson } from './headless-drift'
 import { nodePool } from './node-pool'
 
 /** Bytes of decoded frames kept in memory. */
@@ -20,6 +21,16 @@ export async function run(argv: string[]): Promise<void> {
   const input = await readInput(argv)
   const { name, sources } = await captureSources(input.capture)
   const reader = await openCapture(name, sources)
+  if (input.drift) {
+    try {
+      await publish(input.out, new Map([['calibration.json', await calibrationJson(reader, input.drift)]]))
+    }
+    finally {
+      reader.close()
+      for (const source of sources) await source.close()
+    }
+    return
+  }
   const pool = input.workers > 1 ? nodePool(input.workers) : new InlinePool()
   const engine = new Engine(reader, { pool, budgetBytes: BUDGET, ...(input.blockFrames ? { blockFrames: input.blockFrames } : {}) })
   try {
