@@ -7,6 +7,7 @@ import { proxy, releaseProxy, wrap, type Remote } from 'comlink'
 import type { CaptureInput, CoreApi, ExportFile, ExportKind, FiledRun, FrameColumns, GuestApi, OpenAnswer, Optics, RunEvent, StackImage, WorkerApi } from '../workers/api'
 import type { CaptureOverrides } from '../shared/schemas/capture'
 import type { Recipe } from '../shared/schemas/recipe'
+import type { RestorePlan } from '../shared/schemas/restoration'
 import type { StackFigures } from '../shared/schemas/run'
 
 /** The worker stopped or was ended because it no longer answered. What the browser's store holds is safe; open the capture again. */
@@ -122,6 +123,10 @@ export function useCore(): CoreHandle {
     async figures(count: number) {
       const { api, call } = bound(live())
       return await call(api.figures(count) as Promise<StackFigures>)
+    },
+    async restorePlan(count: number) {
+      const { api, call } = bound(live())
+      return await call(api.restorePlan(count) as Promise<RestorePlan>)
     },
     async frame(index: number) {
       const { api, call } = bound(live())

@@ -4,6 +4,8 @@
  */
 import type { FrameColumns, StackImage } from '~~/workers/api'
 import type { RunDetail } from '~~/shared/api/archive'
+import { restoringMethod } from '~~/shared/schemas/recipe'
+import type { RunResult } from '~~/shared/schemas/run'
 import { useGuestCore } from './useCore'
 
 /** Index of the rung nearest to a count; counts ascend. */
@@ -13,6 +15,9 @@ export function rungOf(counts: readonly number[], count: number): number {
   return best
 }
 
+/** Whether a filed run's stack is restored. */
+export const restoresRun = (result: RunResult) => (result.restoration ? result.restoration.method : restoringMethod(result.recipe.restore.method, result.kind)) !== 'nothing'
+
 export function useFiledRun(run: Ref<RunDetail>) {
   const { ladder, keep } = run.value.result
   const counts = ref<number[]>([...new Set([...ladder.counts, keep.count])].sort((a, b) => a - b))
@@ -21,7 +26,7 @@ export function useFiledRun(run: Ref<RunDetail>) {
   const average = shallowRef<StackImage | null>(null)
   const columns = shallowRef<FrameColumns | null>(null)
   const problem = ref<string | null>(null)
-  const restored = ref(run.value.result.recipe.restore.scales > 0)
+  const restored = ref(restoresRun(run.value.result))
   let core: ReturnType<typeof useGuestCore> | null = null
   let busy = false
   let asked = -1

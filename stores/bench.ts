@@ -7,7 +7,7 @@ import type { CaptureInput, FrameColumns, Optics, PassProgress, RunEvent, StackI
 import type { CaptureFacts, CaptureOverrides, TargetKind } from '~~/shared/schemas/capture'
 import { readRecipe } from '~~/shared/recipe/migrate'
 import { withRecipeValue } from '~~/shared/recipe/sentences'
-import { defaultRecipe, type Recipe } from '~~/shared/schemas/recipe'
+import { defaultRecipe, restoringMethod, type Recipe } from '~~/shared/schemas/recipe'
 import { keepCount, type DisplayStretch, type LadderInfo, type Provenance, type StackFigures } from '~~/shared/schemas/run'
 import { autoStretch } from '~/composables/useStretch'
 import { rememberBench, recallBench } from '~/composables/useBenchMemory'
@@ -40,7 +40,7 @@ export const useBenchStore = defineStore('bench', () => {
   const progress = shallowRef<PassProgress | null>(null)
   const columns = shallowRef<FrameColumns | null>(null)
   const kind = ref<TargetKind | null>(null)
-  const chosen = shallowRef<{ blurPx: number, windowPx: number, centre: { x: number, y: number } } | null>(null)
+  const chosen = shallowRef<{ blurPx: number, windowPx: number, centre: { x: number, y: number }, kind?: TargetKind } | null>(null)
   const noSignal = ref(false)
   const ranked = ref(0)
   const setAside = ref<Record<string, number>>({})
@@ -63,6 +63,8 @@ export const useBenchStore = defineStore('bench', () => {
     return { apertureMm: f.apertureMm, focalLengthMm: f.focalLengthMm, pixelSizeUm: f.pixelSizeUm, obstruction: extra.value.obstruction, wavelengthNm: extra.value.wavelengthNm }
   })
   const scale = computed(() => (facts.value?.pixelSizeUm && facts.value.focalLengthMm ? 206.264806 * facts.value.pixelSizeUm / facts.value.focalLengthMm : null))
+  /** Whether the recipe restores this target at all. */
+  const restores = computed(() => kind.value !== null && restoringMethod(recipe.value.restore.method, kind.value) !== 'nothing')
   const changed = computed(() => saved.value === null || JSON.stringify(saved.value.recipe) !== JSON.stringify(recipe.value))
   const busy = computed(() => phase.value === 'running' || phase.value === 'opening')
 
@@ -177,7 +179,7 @@ export const useBenchStore = defineStore('bench', () => {
     following = true
     try {
       for (;;) {
-        const restored = showRestored.value && recipe.value.restore.scales > 0
+        const restored = showRestored.value && restores.value
         const wanted = `${count.value} ${restored} ${dragging.value} ${JSON.stringify(recipe.value.restore)}`
         if (wanted === wish && image.value?.count === count.value) break
         if (wanted === wish && dragging.value) break
@@ -211,7 +213,7 @@ export const useBenchStore = defineStore('bench', () => {
     remember()
     // Keep and restoration need no pass: the ladder has them.
     if (keepsOnly(before, next) && ladder.value && phase.value !== 'cancelled') {
-      if (before.restore.scales !== next.restore.scales || JSON.stringify(before.restore) !== JSON.stringify(next.restore)) await core?.run(next, optics.value, take).catch(() => undefined)
+      if (JSON.stringify(before.restore) !== JSON.stringify(next.restore)) await core?.run(next, optics.value, take).catch(() => undefined)
       return follow()
     }
     ladder.value = null
@@ -228,7 +230,13 @@ export const useBenchStore = defineStore('bench', () => {
     return apply(next)
   }
   function edit(path: string, value: unknown) {
-    return change(readRecipe(withRecipeValue(recipe.value, path, value)))
+    let next = withRecipeValue(recipe.value, path, value)
+    // Gains set by hand begin with the measured ones.
+    const measured = image.value?.restoration?.gains ?? []
+    if (path === 'restore.gainBy' && value === 'hand' && measured.length > 0) {
+      next = { ...next, restore: { ...next.restore, gains: next.restore.gains.map((gain, j) => Math.min(10, Math.max(0, Math.round(10 * (measured[j] ?? 1)) / 10 || 0))), thresholdsSigma: next.restore.thresholdsSigma.map(() => next.restore.thresholdSigma) } }
+    }
+    return change(readRecipe(next))
   }
   function undo() {
     const last = past.value.at(-1)
@@ -314,7 +322,7 @@ export const useBenchStore = defineStore('bench', () => {
 
   return {
     phase, input, facts, overrides, extra, problem, resumed, recipe, saved, past, future, progress, columns, kind, chosen, noSignal, ranked, setAside, ladder, proofs, average, provenance,
-    image, figures, stretch, stretchIsAuto, showRestored, dragging, count, optics, scale, changed, busy,
+    image, figures, stretch, stretchIsAuto, showRestored, dragging, count, optics, scale, restores, changed, busy,
     open, correct, run, change, edit, undo, redo, keep, endDrag, setStretch, applySaved, cancel, close, remember, exporter,
   }
 })

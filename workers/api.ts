@@ -5,6 +5,7 @@
  */
 import type { CaptureFacts, CaptureOverrides, TargetKind } from '../shared/schemas/capture'
 import type { Recipe, ScoreMeasure } from '../shared/schemas/recipe'
+import type { RestoreMethod, RestorePlan } from '../shared/schemas/restoration'
 import type { DisplayStretch, LadderInfo, Provenance, RunResult, SetAsideReason, StackFigures } from '../shared/schemas/run'
 
 /** A capture to open: files picked by the user (one file, or the files of a folder in any order), or a demo. */
@@ -51,7 +52,7 @@ export interface FrameColumns {
 /** Stage results as they come. Arrays are copies that the receiver owns. */
 export type RunEvent =
   | { kind: 'progress', progress: PassProgress }
-  | { kind: 'surveyed', target: TargetKind, chosen: { rankBy?: ScoreMeasure, blurPx: number, windowPx: number, centre: { x: number, y: number } }, noise: number, noSignal: boolean, preview: StackImage }
+  | { kind: 'surveyed', target: TargetKind, chosen: { rankBy?: ScoreMeasure, blurPx: number, windowPx: number, centre: { x: number, y: number }, kind?: TargetKind }, noise: number, noSignal: boolean, preview: StackImage }
   | { kind: 'frames', columns: FrameColumns, complete: boolean }
   | { kind: 'preview', image: StackImage }
   | { kind: 'ranked', ranked: number, setAside: Partial<Record<SetAsideReason, number>> }
@@ -68,8 +69,25 @@ export interface StackImage {
   /** Frames in it. */
   count: number
   restored: boolean
-  /** With a restored stack: deepest dip and highest rise beyond what was nearby, as shares of the image's range. */
-  overshoot?: { under: number, over: number }
+  /** Where the recipe restores: what was done, and the figures of the guards. */
+  restoration?: RestorationReport
+}
+
+/** What a restoration did and what it cost; see workers/restore/guards.ts for the overshoot's figures. */
+export interface RestorationReport {
+  method: RestoreMethod
+  /** Why nothing is restored, for the user; empty otherwise. */
+  reason: string
+  /** Wavelets: gain of each scale, finest first (of the green plane). */
+  gains: number[]
+  /** Richardson-Lucy: rounds made. */
+  rounds: number
+  /** Noise of the restored stack over that of the stack, from halves; null where there are none. */
+  noiseGain: number | null
+  /** Extended targets: Strehl ratio of the stack and D/r0 of the air, as measured. */
+  strehl: number | null
+  apertureOverR0: number | null
+  overshoot: { under: number, over: number, rimBright: number | null, rimDark: number | null }
 }
 
 export interface Optics { apertureMm: number, focalLengthMm: number, pixelSizeUm: number, obstruction: number, wavelengthNm: number }
@@ -94,6 +112,8 @@ export interface CoreApi {
   stack(count: number, restored: boolean, dragging?: boolean): Promise<StackImage>
   /** Figures of a stack of `count` frames. */
   figures(count: number): Promise<StackFigures>
+  /** What the recipe's restoration comes to for the best `count` frames; filed with a run. */
+  restorePlan(count: number): Promise<RestorePlan>
   /** One decoded frame (luminance as judged), for looking at a single exposure. */
   frame(index: number): Promise<StackImage>
   /** Files for saving or filing; `stretch` is used by the 8-bit views. */

@@ -63,7 +63,7 @@ export const recipes = {
     description: 'For a planet through a colour mosaic. Ranks by how much of the reference’s detail a frame carries, so that grain does not choose the frames.',
     versions: [
       { recipe: planets, note: '' },
-      { recipe: { ...planets, keep: { fraction: 0.2 }, restore: { scales: 2, gain: 1.8, thresholdSigma: 3 } }, note: 'Fewer frames and two scales restored, after the review of the first try.' },
+      { recipe: { ...planets, keep: { fraction: 0.2 }, restore: { ...planets.restore, method: 'wavelets', scales: 2, gainBy: 'hand', gains: [1.8, 1.8, 1, 1, 1, 1], thresholdsSigma: [3, 3, 1, 1, 1, 1] } }, note: 'Fewer frames and two scales restored, after the review of the first try.' },
     ],
   },
 } satisfies Record<string, {

@@ -8,11 +8,22 @@ type AnyRecipe = Record<string, unknown>
  * What version 2 adds, with the values that do what version 1 did. Only what is missing is filled in, so that an
  * old recipe gives the same result as before.
  */
-const addedInVersion2: Record<string, AnyRecipe> = {}
+const addedInVersion2: Record<string, AnyRecipe> = {
+  restore: { gainBy: 'hand', psf: 'capture', psfCore: 0.3, psfHaloPx: 16, psfReference: null, iterations: 30, stop: 'noise', snr: null },
+}
+
+/** One gain and one threshold for all restored scales, 0 scales being none, as version 1 had it. */
+function oneGainForAll(recipe: AnyRecipe): AnyRecipe {
+  const restore = recipe.restore
+  if (!isGroup(restore) || !('gain' in restore) || 'gains' in restore) return recipe
+  const { gain, scales, ...rest } = restore
+  const none = scales === 0
+  return { ...recipe, restore: { ...rest, method: none ? 'nothing' : 'wavelets', scales: none ? 3 : scales, gains: new Array(6).fill(gain), thresholdsSigma: new Array(6).fill(rest.thresholdSigma) } }
+}
 
 /** migrations[v] turns a recipe of version v into one of version v + 1. */
 const migrations: Record<number, (recipe: AnyRecipe) => AnyRecipe> = {
-  1: recipe => ({ ...withMissing(recipe, addedInVersion2), version: 2 }),
+  1: recipe => ({ ...withMissing(oneGainForAll(recipe), addedInVersion2), version: 2 }),
 }
 
 function isGroup(value: unknown): value is AnyRecipe {

@@ -13,7 +13,7 @@ export { percentText, type Chosen, type Piece, type ValueControl } from './claus
 
 /** The paragraph. `chosen` fills in what the survey found for values the recipe leaves open. */
 export function recipePieces(recipe: Recipe, chosen: Chosen = {}): Piece[] {
-  return [...judgeClause(recipe, chosen), ...registerClause(recipe, chosen), ...combineClause(recipe), ...restoreClause(recipe)]
+  return [...judgeClause(recipe, chosen), ...registerClause(recipe, chosen), ...combineClause(recipe), ...restoreClause(recipe, chosen)]
 }
 
 /** The paragraph as plain text, for FITS HISTORY, mails and screen readers. */

@@ -3,6 +3,7 @@
  * older version is migrated by shared/recipe/migrate.ts. Every field has its unit in its name or here.
  */
 import { z } from 'zod'
+import { restoreMethods, type RestoreMethod } from './restoration'
 
 export const RECIPE_VERSION = 2
 
@@ -45,12 +46,30 @@ export const recipeSchema = z.object({
     kernel: z.enum(resampleKernels),
   }).strict(),
   restore: z.object({
-    /** À trous B3 wavelet scales that are sharpened, 0 (nothing) to 5. */
-    scales: z.number().int().min(0).max(5),
-    /** Gain on each restored scale; 1 leaves it as it is. */
-    gain: z.number().min(1).max(6),
-    /** Wavelet coefficients below this many sigmas of the noise are not amplified. */
+    /** What restores; null takes what fits the target (see restoringMethod). */
+    method: z.enum(restoreMethods).nullable(),
+    /** Wavelets: scales of the à trous transform, finest first, that have a gain; 1 to 6. */
+    scales: z.number().int().min(1).max(6),
+    /** Wavelets: gains from the measured transfer and noise, or by hand. */
+    gainBy: z.enum(['transfer', 'hand']),
+    /** Wavelets, by hand: gain of each scale, finest first; 1 leaves a scale as it is, 0 takes it away. */
+    gains: z.array(z.number().min(0).max(10)).length(6),
+    /** Wavelets: only what stands this many sigmas above the noise of its scale is amplified: one figure for all measured gains, … */
     thresholdSigma: z.number().min(0).max(10),
+    /** … and one for each gain by hand, finest scale first. */
+    thresholdsSigma: z.array(z.number().min(0).max(10)).length(6),
+    /** What blurs: measured on the capture itself, on a reference star, or described by the next two. */
+    psf: z.enum(['capture', 'analytic', 'reference']),
+    /** Described blur: share of the light in the diffraction-limited core (0.01-1), the rest in a halo of this full width at half maximum, px. */
+    psfCore: z.number().min(0.01).max(1),
+    psfHaloPx: z.number().min(0.5).max(400),
+    /** Transfer of a reference star's stack over the telescope's own: values at 0, step, 2 step … cycles per px. */
+    psfReference: z.object({ name: z.string().min(1).max(120), step: z.number().positive().max(0.5), values: z.array(z.number().min(0).max(1)).min(2).max(512) }).strict().nullable(),
+    /** Richardson-Lucy: rounds at most, and whether it ends earlier, where what is left unexplained is no more than the noise. */
+    iterations: z.number().int().min(1).max(500),
+    stop: z.enum(['noise', 'count']),
+    /** Wiener: ratio of the powers of scene and noise; null measures it at each frequency from independent halves. */
+    snr: z.number().min(0.1).max(1e6).nullable(),
   }).strict(),
 }).strict()
 
@@ -61,6 +80,11 @@ export type ScoreMeasure = typeof scoreMeasures[number]
 export function rankingMeasure(rankBy: ScoreMeasure | null, kind: 'star' | 'extended'): ScoreMeasure {
   if (kind === 'star') return rankBy === null || rankBy === 'transfer' ? 'peak' : rankBy
   return rankBy ?? 'transfer'
+}
+
+/** What restores a target: as the recipe says, or nothing for stars, whose cores are the result, and wavelets for extended targets. */
+export function restoringMethod(method: RestoreMethod | null, kind: 'star' | 'extended'): RestoreMethod {
+  return method ?? (kind === 'star' ? 'nothing' : 'wavelets')
 }
 
 export type RegisterMethod = typeof registerMethods[number]
@@ -74,5 +98,8 @@ export const defaultRecipe: Recipe = {
   register: { method: 'correlation', windowPx: null, centre: null, referenceFraction: 0.05, refineRounds: 2 },
   keep: { fraction: 0.1 },
   combine: { method: 'mean', kernel: 'cubic' },
-  restore: { scales: 0, gain: 2, thresholdSigma: 3 },
+  restore: {
+    method: null, scales: 6, gainBy: 'transfer', gains: [1.5, 1.5, 1.2, 1, 1, 1], thresholdSigma: 1, thresholdsSigma: [3, 2, 1, 1, 1, 1],
+    psf: 'capture', psfCore: 0.3, psfHaloPx: 16, psfReference: null, iterations: 30, stop: 'noise', snr: null,
+  },
 }

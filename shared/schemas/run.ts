@@ -2,6 +2,7 @@
 import { z } from 'zod'
 import { captureFactsSchema, targetKindSchema } from './capture'
 import { recipeSchema, scoreMeasures } from './recipe'
+import { restorePlanSchema } from './restoration'
 
 /** The standard keep fractions of the proofs, ascending. */
 export const proofFractions = [0.01, 0.02, 0.05, 0.1, 0.2, 0.5, 1] as const
@@ -68,7 +69,7 @@ export const runResultSchema = z.object({
   recipe: recipeSchema,
   recipeHash: z.string().regex(/^[0-9a-f]{64}$/),
   kind: targetKindSchema,
-  chosen: z.object({ rankBy: z.enum(scoreMeasures).optional(), blurPx: z.number(), windowPx: z.number(), centre: z.object({ x: z.number(), y: z.number() }) }),
+  chosen: z.object({ rankBy: z.enum(scoreMeasures).optional(), blurPx: z.number(), windowPx: z.number(), centre: z.object({ x: z.number(), y: z.number() }), kind: targetKindSchema.optional() }),
   keep: z.object({ fraction: z.number(), count: z.number().int().nonnegative() }),
   /** Ranked frames and, per reason, those set aside. */
   ranked: z.number().int().nonnegative(),
@@ -79,6 +80,8 @@ export const runResultSchema = z.object({
   average: stackFiguresSchema,
   ladder: ladderInfoSchema,
   stretch: displayStretchSchema,
+  /** What the recipe's restoration came to for the filed stack; absent in runs of older versions. */
+  restoration: restorePlanSchema.optional(),
   provenance: provenanceSchema,
 })
 

@@ -1,6 +1,8 @@
 import { describe, expect, it } from 'vitest'
 import { decompose, waveletNoise } from '../../workers/restore/atrous'
-import { restore } from '../../workers/restore/restore'
+import { overshootOf } from '../../workers/restore/guards'
+import { ownNoise } from '../../workers/restore/plan'
+import { sharpenPlane } from '../../workers/restore/wavelets'
 
 /** Normal deviates from a seeded generator (mulberry32 and Box-Muller). */
 function noise(n: number, seed: number): Float32Array {
@@ -41,29 +43,74 @@ describe('à trous wavelets', () => {
   })
 })
 
-describe('restoration', () => {
+describe('restoration by wavelets', () => {
   const n = 128
   const star = (sigma: number) => Float32Array.from({ length: n * n }, (_, i) => 5000 * Math.exp(-((i % n - 64) ** 2 + (Math.floor(i / n) - 64) ** 2) / (2 * sigma * sigma)))
+  const sharpen = (image: Float32Array, gains: number[], thresholds: number[]) => {
+    const out = new Float32Array(image.length)
+    sharpenPlane(image, n, n, { gains, thresholds }, out)
+    return out
+  }
 
-  it('changes nothing with no scales or a gain of one', () => {
+  it('changes nothing with gains of one', () => {
     const image = star(3)
-    expect(restore(image, n, n, 1, { scales: 0, gain: 3, thresholdSigma: 3 }).samples).toEqual(image)
-    expect(restore(image, n, n, 1, { scales: 3, gain: 1, thresholdSigma: 0 }).samples).toEqual(image)
+    expect(sharpen(image, [], [])).toEqual(image)
+    expect(sharpen(image, [1, 1, 1], [0, 0, 0])).toEqual(image)
   })
 
-  it('narrows a star and reports the dark ring it makes', () => {
-    const { samples, overshoot } = restore(star(3), n, n, 1, { scales: 3, gain: 3, thresholdSigma: 0 })
+  it('takes a scale away with a gain of none, whatever the threshold', () => {
+    const image = noise(n * n, 8)
+    const { details } = decompose(image, n, n, 1)
+    sharpen(image, [0], [1e9]).forEach((value, i) => expect(value).toBeCloseTo(image[i]! - details[0]![i]!, 5))
+  })
+
+  it('narrows a star, and the guard tells the dark ring it makes', () => {
+    const samples = sharpen(star(3), [3, 3, 3], [0, 0, 0])
     const beside = (image: Float32Array) => image[64 * n + 67]! / image[64 * n + 64]!
     expect(beside(samples)).toBeLessThan(0.95 * beside(star(3)))
-    expect(overshoot.under).toBeGreaterThan(0.005)
-    expect(overshoot.under).toBeLessThan(0.5)
+    const { under } = overshootOf(star(3), samples, n, n, 1, false)
+    expect(under).toBeGreaterThan(0.005)
+    expect(under).toBeLessThan(0.5)
   })
 
-  it('finds the noise and leaves grain below the threshold as it is', () => {
+  it('leaves grain below the threshold as it is; the noise by hand is found in the image', () => {
     const grain = noise(n * n, 3).map(v => v * 7)
-    const { samples, noise: sigma } = restore(grain, n, n, 1, { scales: 2, gain: 4, thresholdSigma: 6 })
-    expect(Math.abs(sigma[0]! / 7 - 1)).toBeLessThan(0.03)
-    expect(samples).toEqual(grain)
-    expect(deviation(restore(grain, n, n, 1, { scales: 2, gain: 4, thresholdSigma: 0 }).samples)).toBeGreaterThan(3 * 7)
+    expect(Math.abs(ownNoise(grain, n, n)[0]! / (7 * waveletNoise[0]) - 1)).toBeLessThan(0.03)
+    expect(sharpen(grain, [4, 4], [6 * 7, 6 * 7])).toEqual(grain)
+    expect(deviation(sharpen(grain, [4, 4], [0, 0]))).toBeGreaterThan(3 * 7)
   })
 })
+
+describe('the guard at a limb', () => {
+  it('gives the overshoot of an unsharp mask at a blurred edge', () => {
+    // An edge of σ = 1 px, y = x + a (x − x ∗ G) with σ = 2 px: overshoot 0.0605, 0.1404, 0.3137 of the step for a = .5, 1, 2
+    // (computed from the closed form: 1 + a times the largest excess of one error function over the other).
+    const n = 96
+    const edge = (sigma: number, at: number) => Float32Array.from({ length: n * n }, (_, i) => 100 + 400 * cumulative(((i % n) - at) / sigma))
+    // The rim's top lies 2.181, 1.935, 1.739 px from the edge: where a pixel is.
+    for (const [a, known, top] of [[0.5, 0.0605, 2.181], [1, 0.1404, 1.935], [2, 0.3137, 1.739]] as const) {
+      const before = edge(1, 48 - top)
+      const soft = edge(Math.sqrt(5), 48 - top)
+      const { rimBright, rimDark } = overshootOf(before, before.map((v, i) => v + a * (v - soft[i]!)), n, n, 1, true)
+      expect(Math.abs(rimBright! / known - 1)).toBeLessThan(0.02)
+      // On the dark side the top falls between pixels.
+      expect(Math.abs(rimDark! / known - 1)).toBeLessThan(0.2)
+    }
+    const before = edge(1, 47.5)
+    expect(overshootOf(before, before, n, n, 1, true)).toMatchObject({ rimBright: 0, rimDark: 0 })
+    expect(overshootOf(before, before, n, n, 1, false).rimBright).toBeNull()
+  })
+})
+
+/** Normal distribution function by its series about 0 (|x| < 7). */
+function cumulative(x: number): number {
+  if (x < -6) return 0
+  if (x > 6) return 1
+  let term = x
+  let sum = x
+  for (let k = 1; k < 120; k++) {
+    term *= -x * x / (2 * k)
+    sum += term / (2 * k + 1)
+  }
+  return 0.5 + sum / Math.sqrt(2 * Math.PI)
+}

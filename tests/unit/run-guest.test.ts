@@ -12,7 +12,7 @@ import { InlinePool } from '../../workers/run/pool'
 import { runResult } from '../../workers/run/result'
 import { movingDouble, SpyReader } from './support/moving-double'
 
-const recipe = withRecipeValue(defaultRecipe, 'restore.scales', 2)
+const recipe = withRecipeValue(withRecipeValue(defaultRecipe, 'restore.method', 'wavelets'), 'restore.gainBy', 'hand')
 let engine: Engine
 let filed: FiledRun
 let averageBytes = 0
@@ -57,7 +57,10 @@ describe('a filed run without its capture', () => {
     const image = await guest.stack(9, false)
     expect(ranges.length).toBe(1)
     expect(image).toEqual(await engine.stack(9, false))
-    expect(await guest.stack(9, true)).toEqual(await engine.stack(9, true))
+    const restored = await guest.stack(9, true)
+    expect(restored.samples).toEqual((await engine.stack(9, true)).samples)
+    expect(restored.samples).not.toEqual(image.samples)
+    expect(restored.restoration).toMatchObject({ method: 'wavelets', gains: [1.5, 1.5, 1.2, 1, 1, 1] })
     expect(ranges.length).toBe(1)
     expect(await guest.average()).toEqual(engine.average())
     await guest.close()

@@ -6,9 +6,9 @@ import type { Optics, Pass, RunEvent, StackImage } from '../api'
 import type { FrameReader } from '../decode/types'
 import { hasSimd } from '../kernels/index'
 import { makeRegisterPlan } from '../register/plan'
-import { restore } from '../restore/restore'
 import { canonicalJson } from '../../shared/recipe/canonical'
-import { rankingMeasure, type Recipe, type ScoreMeasure } from '../../shared/schemas/recipe'
+import { rankingMeasure, restoringMethod, type Recipe, type ScoreMeasure } from '../../shared/schemas/recipe'
+import type { RestorePlan } from '../../shared/schemas/restoration'
 import type { Provenance, StackFigures } from '../../shared/schemas/run'
 import { engineName, lullVersion } from './version'
 import { averageImage } from './average'
@@ -20,11 +20,12 @@ import { gradePass, type Graded, type GradeProgress } from './grade-pass'
 import { stageKeys, type StageKeys } from './keys'
 import { ladderPass, type Ladder } from './ladder-pass'
 import { LadderKeeper } from './ladder-resume'
-import type { Pool } from './pool'
+import { breathe, type Pool } from './pool'
 import { growingPreview, shownAverage, singleFrame } from './preview'
 import { ProgressMeter } from './progress'
 import { proofs, repeatProofs, type Proof } from './proofs'
 import { countSetAside, rankFrames, type Ranking } from './rank'
+import { Restorer } from './restorer'
 import { firstReference, refinePass, type Refined, type RefineProgress } from './refine-pass'
 import { Stacker } from './stacker'
 import { Stages, type StageStore } from './store'
@@ -51,6 +52,7 @@ export interface RunState {
   ladder: Ladder
   stacker: Stacker
   figurer: Figurer
+  restorer: Restorer
   optics: Optics | null
   /** Null until they are complete. */
   proofs: Proof[] | null
@@ -108,7 +110,8 @@ export class Engine {
     const stacker = same?.stacker ?? new Stacker(ladder, ranking.order, refined.shifts, this.frames, surveyed.plan)
     const unchanged = same !== null && canonicalJson(same.optics) === canonicalJson(optics)
     const figurer = unchanged ? same.figurer : new Figurer({ stacker, ladder, order: ranking.order, peak: graded.table.peak, surveyed, optics })
-    this.#state = { recipe, measure: by, optics, keys, surveyed, graded, refined, ranking, ladder, stacker, figurer, proofs: unchanged ? same.proofs : null }
+    const restorer = unchanged ? same.restorer : new Restorer({ stacker, ladder, surveyed, optics, frames: graded.table.count })
+    this.#state = { recipe, measure: by, optics, keys, surveyed, graded, refined, ranking, ladder, stacker, figurer, restorer, proofs: unchanged ? same.proofs : null }
     const { counts, width, height, planes } = ladder
     if (counts.length > 0) emit({ kind: 'ladder', ladder: { counts, width, height, planes } })
     const state = this.#state
@@ -119,11 +122,16 @@ export class Engine {
 
   /** The mean of exactly the best `count` frames (dragging: or of the nearest rung); restored as the last run's recipe says where asked. */
   async stack(count: number, restored: boolean, signal?: AbortSignal, dragging = false): Promise<StackImage> {
-    const { stacker, recipe } = this.#need()
+    const { stacker, recipe, restorer, surveyed } = this.#need()
     const image = await stacker.stack(dragging ? stacker.nearAtHand(count) : count, signal)
-    if (!restored || recipe.restore.scales === 0) return image
-    const { samples, overshoot } = restore(image.samples, image.width, image.height, image.planes, recipe.restore)
-    return { ...image, samples, restored: true, overshoot }
+    if (!restored || restoringMethod(recipe.restore.method, surveyed.survey.kind) === 'nothing') return image
+    return await restorer.restored(image, recipe.restore, pauseFor(signal), dragging)
+  }
+
+  /** The numbers that the last run's restoration comes to for the best `count` frames. */
+  restorePlan(count: number): Promise<RestorePlan> {
+    const { restorer, recipe } = this.#need()
+    return restorer.plan(count, recipe.restore, pauseFor())
   }
 
   async figures(count: number): Promise<StackFigures> {
@@ -233,8 +241,16 @@ export class Engine {
   }
 
   #emitSurvey({ survey, score, plan }: Surveyed, rankBy: ScoreMeasure, emit: (event: RunEvent) => void): void {
-    const chosen = { rankBy, blurPx: score.blurPx, windowPx: score.windowPx, centre: score.centre }
+    const chosen = { rankBy, blurPx: score.blurPx, windowPx: score.windowPx, centre: score.centre, kind: survey.kind }
     const preview = luminanceImage(survey.reference, plan.width, plan.height, 1)
     emit({ kind: 'surveyed', target: survey.kind, chosen, noise: survey.noise, noSignal: survey.noSignal, preview })
+  }
+}
+
+/** Lets waiting messages in, and ends work that nobody waits for any more. */
+function pauseFor(signal?: AbortSignal): () => Promise<void> {
+  return async () => {
+    await breathe()
+    signal?.throwIfAborted()
   }
 }

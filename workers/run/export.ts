@@ -121,8 +121,8 @@ class Exporter {
   }
 
   #chosen() {
-    const { measure, surveyed: { score: { blurPx, windowPx } } } = this.#engine.state!
-    return { rankBy: measure, blurPx, windowPx }
+    const { measure, surveyed: { score: { blurPx, windowPx }, survey: { kind } } } = this.#engine.state!
+    return { rankBy: measure, blurPx, windowPx, kind }
   }
 
   async #cards(kept: { count: number, fraction: number } | null): Promise<FitsCard[]> {

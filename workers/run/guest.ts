@@ -4,10 +4,14 @@
  */
 import type { FiledRun, FrameColumns, GuestApi, StackImage } from '../api'
 import { cubeLayout, decodeCubeFrame, type CubeLayout } from '../encode/fits'
+import { overshootOf } from '../restore/guards'
+import { planByHand } from '../restore/plan'
+import { reportOf } from '../restore/report'
 import { restore } from '../restore/restore'
 import { httpSource } from '../source/http'
 import type { ByteSource } from '../source/types'
 import type { StackFigures } from '../../shared/schemas/run'
+import { breathe } from './pool'
 import { columnsFromCsv } from './frames-table'
 
 const notTheLadder = 'The ladder of this run cannot be read: its file is not the expected one.'
@@ -45,9 +49,11 @@ export class GuestRun implements GuestApi {
     const shown = this.#counts[nearestRung(this.#counts, count)]!
     const samples = await this.#plane(shown)
     const image: StackImage = { width, height, planes, samples: samples.slice(), count: shown, restored: false }
-    if (!restored || result.recipe.restore.scales === 0) return image
-    const done = restore(image.samples, width, height, planes, result.recipe.restore)
-    return { ...image, samples: done.samples, restored: true, overshoot: done.overshoot }
+    if (!restored) return image
+    const plan = result.restoration ?? planByHand(result.recipe.restore, result.kind, image.samples, width, height, planes)
+    if (plan.method === 'nothing') return { ...image, restoration: reportOf(plan, null, null, 0) }
+    const { samples: sharper, rounds } = await restore(image.samples, width, height, planes, plan, breathe)
+    return { ...image, samples: sharper, restored: true, restoration: reportOf(plan, overshootOf(image.samples, sharper, width, height, planes, false), null, rounds) }
   }
 
   /** The filed figures of the proof that is nearest; a guest has no frames to compute others from. */

@@ -15,13 +15,14 @@ export async function runResult(engine: Engine, recipe: Recipe, recipeHash: stri
   const proofs = []
   for (const fraction of proofFractions) proofs.push(known.get(fraction) ?? figurer.of(await stacker.stack(keepCount(fraction, stacker.ranked))))
   const { counts, width, height, planes } = ladder
+  const restoration = await engine.restorePlan(count)
   return {
     facts: engine.reader.facts, recipe, recipeHash, kind: survey.kind,
-    chosen: { rankBy: state.measure, blurPx: score.blurPx, windowPx: score.windowPx, centre: score.centre },
+    chosen: { rankBy: state.measure, blurPx: score.blurPx, windowPx: score.windowPx, centre: score.centre, kind: survey.kind },
     keep: { fraction: recipe.keep.fraction, count },
     ranked: stacker.ranked, setAside: countSetAside(refined.shifts.setAside),
     figures: figurer.of(image), proofs, average: known.get('average') ?? figurer.ofAverage(engine.averageShown(), graded.table.count),
     ladder: { counts, width, height, planes },
-    stretch: displayRange(image), provenance: engine.provenance(),
+    stretch: displayRange(image), restoration, provenance: engine.provenance(),
   }
 }

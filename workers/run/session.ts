@@ -2,6 +2,7 @@ import type { CaptureInput, CoreApi, ExportFile, ExportKind, OpenAnswer, Optics,
 import { CaptureError } from '../decode/types'
 import type { CaptureOverrides } from '../../shared/schemas/capture'
 import type { Recipe } from '../../shared/schemas/recipe'
+import type { RestorePlan } from '../../shared/schemas/restoration'
 import type { StackFigures } from '../../shared/schemas/run'
 import { Engine } from './engine'
 import { exportFiles, type ExportContext } from './export'
@@ -74,6 +75,7 @@ export class Session implements CoreApi {
   }
 
   figures(count: number): Promise<StackFigures> { return this.#need().figures(count) }
+  restorePlan(count: number): Promise<RestorePlan> { return this.#need().restorePlan(count) }
   frame(index: number): Promise<StackImage> { return this.#need().frame(index) }
   export(kinds: ExportKind[], context: ExportContext): Promise<ExportFile[]> { return exportFiles(this.#need(), kinds, context) }
 

@@ -124,8 +124,13 @@ export class Stacker {
     const all = this.coverage(counts[rung]!)
     const first = this.coverage(counts[rung]!, 2)
     const one = meanOf(Float64Array.from(halves[rung]!), first, scale, planes)
+    const second = all.map((n, i) => n - first[i]!)
     const rest = Float64Array.from(sums[rung]!, (value, i) => value - halves[rung]![i]!)
-    return [one, meanOf(rest, all.map((n, i) => n - first[i]!), scale, planes)]
+    const other = meanOf(rest, second, scale, planes)
+    const { width, height } = this.#ladder
+    fillUncovered(one, first, width, height, planes)
+    fillUncovered(other, second, width, height, planes)
+    return [one, other]
   }
 
   /** Frames in the stack of a rung. */

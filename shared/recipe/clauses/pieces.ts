@@ -1,4 +1,5 @@
 /** What the recipe's paragraph is made of. */
+import type { TargetKind } from '../../schemas/capture'
 import type { ScoreMeasure } from '../../schemas/recipe'
 
 export type Value = string | number | boolean | null
@@ -14,7 +15,7 @@ export type Piece =
   | { kind: 'value', path: string, text: string, name: string, value: Value, control: ValueControl }
 
 /** What the survey chose where the recipe leaves the choice to Lull; shown as "1.2 px, chosen". */
-export interface Chosen { rankBy?: ScoreMeasure, blurPx?: number, windowPx?: number }
+export interface Chosen { rankBy?: ScoreMeasure, blurPx?: number, windowPx?: number, kind?: TargetKind }
 
 export const text = (words: string): Piece => ({ kind: 'text', text: words })
 
