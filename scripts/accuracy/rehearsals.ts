@@ -3,6 +3,7 @@ import type { StackImage } from '../../workers/api'
 import { defaultRecipe } from '../../shared/schemas/recipe'
 import { demoScene, rehearsalReader, type RehearsalSpec } from '../../workers/rehearse/index'
 import { Engine } from '../../workers/run/engine'
+import { rehearsalGeometry } from '../../workers/rehearse/geometry'
 import { nodePool } from '../lib/node-pool'
 import type { Row } from './rows'
 import type { KnownCapture } from './truth'
@@ -22,8 +23,31 @@ function specs(): { spec: RehearsalSpec, scene: KnownCapture['scene'] }[] {
       scene: 'stars',
     },
     { spec: { ...demoScene('planet'), frames: 200 }, scene: 'planet' },
+    { spec: { ...demoScene('planet'), name: 'planet in grey', seed: 31, frames: 200, air: { ...demoScene('planet').air, apertureOverR0: 5 }, detector: { ...demoScene('planet').detector, mosaic: 'none' } }, scene: 'planet' },
     { spec: { ...demoScene('terrain'), frames: 120 }, scene: 'terrain' },
+    { spec: { ...demoScene('terrain'), name: 'patch in calm air', seed: 32, frames: 120, air: { ...demoScene('terrain').air, apertureOverR0: 2.2 } }, scene: 'terrain' },
   ]
+}
+
+/** The scene of a grey extended rehearsal without air and (nearly) without noise, somewhat larger than the frames; null for others. */
+export async function perfectImage(spec: RehearsalSpec): Promise<KnownCapture['sceneImage']> {
+  const { scene, detector } = spec
+  if ((scene.kind !== 'planet' && scene.kind !== 'terrain') || detector.mosaic !== 'none') return null
+  const still = { ...spec.motion, startX: 0, startY: 0, rateXPxPerS: 0, rateYPxPerS: 0, periodicPx: 0, shakePx: 0, jumps: [] }
+  const air = { ...spec.air, apertureOverR0: 0 }
+  // A scene is drawn on a square that fits the motion: the same square, or it would be another scene.
+  const canvas = rehearsalGeometry(spec).canvasSize
+  let pad = 512
+  while (pad > 0 && rehearsalGeometry({ ...spec, air, motion: still, width: spec.width + pad, height: spec.height + pad }).canvasSize > canvas) pad -= 4
+  const width = spec.width + pad
+  const height = spec.height + pad
+  const reader = await rehearsalReader({
+    ...spec, width, height, frames: 1, subSteps: 1, cloud: null, dropShare: 0, air, motion: still,
+    scene: { ...scene, fluxElectrons: 1e6 },
+    detector: { ...detector, bitDepth: 16, gain: 60_000 / 1.2e6, bias: 200, readNoise: 0, skyElectrons: 0, hotPixels: 0 },
+  })
+  const { samples } = await reader.readFrames(0, 1)
+  return { planes: [Float32Array.from(samples)], width, height, blurred: true }
 }
 
 export async function* rehearsalTruths(): AsyncGenerator<KnownCapture> {
@@ -42,7 +66,7 @@ export async function* rehearsalTruths(): AsyncGenerator<KnownCapture> {
       optics: spec.optics,
       references: {},
       referenceSource: '',
-      sceneImage: null,
+      sceneImage: await perfectImage(spec),
       wavelengthsNm: [spec.optics.wavelengthNm],
     }
   }

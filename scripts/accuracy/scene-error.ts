@@ -15,25 +15,25 @@ function diffraction(f: number, fc: number): number {
 
 const sinc = (x: number): number => (x === 0 ? 1 : Math.sin(Math.PI * x) / (Math.PI * x))
 
-/** @returns rms error over the scene's rms contrast, and the stack's transfer at 0.2 and 0.3 of the cut-off */
-export function sceneErrors(image: StackImage, known: KnownCapture): { error: number, transfer: [number, number] } {
+/** @returns rms error over the scene's rms contrast, and the stack's transfer in rings about `at`, in units of the cut-off */
+export function sceneErrors(image: StackImage, known: Pick<KnownCapture, 'sceneImage' | 'optics' | 'wavelengthsNm'>, at: readonly number[] = [0.2, 0.3]): { error: number, transfer: number[] } {
   const scene = known.sceneImage!
   const n = 512
   const cut = n / 2 - 1
   const forward = createForward(n, cut)
   let errors = 0
-  const transfers: [number, number][] = []
+  const transfers: number[][] = []
   const planes = Math.min(image.planes, scene.planes.length)
   for (let plane = 0; plane < planes; plane++) {
     const fc = 1 / lambdaOverDPx({ ...known.optics, wavelengthNm: known.wavelengthsNm[plane] ?? known.optics.wavelengthNm })
-    const { error, transfer } = onePlane(image.samples.subarray(plane * image.width * image.height, (plane + 1) * image.width * image.height), image.width, image.height, scene.planes[plane]!, scene.width, scene.height, fc, n, cut, forward)
+    const { error, transfer } = onePlane(image.samples.subarray(plane * image.width * image.height, (plane + 1) * image.width * image.height), image.width, image.height, scene.planes[plane]!, scene.width, scene.height, fc, n, cut, forward, scene.blurred ?? false, at)
     errors += error
     transfers.push(transfer)
   }
-  return { error: errors / planes, transfer: [0, 1].map(k => transfers.reduce((s, t) => s + t[k]!, 0) / planes) as [number, number] }
+  return { error: errors / planes, transfer: at.map((_, k) => transfers.reduce((s, t) => s + t[k]!, 0) / planes) }
 }
 
-function onePlane(stack: Float32Array, width: number, height: number, scene: Float32Array, sceneWidth: number, sceneHeight: number, fc: number, n: number, cut: number, forward: ReturnType<typeof createForward>) {
+function onePlane(stack: Float32Array, width: number, height: number, scene: Float32Array, sceneWidth: number, sceneHeight: number, fc: number, n: number, cut: number, forward: ReturnType<typeof createForward>, blurred: boolean, rings: readonly number[]) {
   // The scene, blurred in Fourier space on a grid that holds it, mirrored edges not needed: only its middle is compared.
   const window = new Float32Array(n * n)
   let mean = 0
@@ -42,7 +42,7 @@ function onePlane(stack: Float32Array, width: number, height: number, scene: Flo
   for (let y = 0; y < sceneHeight; y++) for (let x = 0; x < sceneWidth; x++) window[y * n + x] = scene[y * sceneWidth + x]! - mean
   const spectrum = new Float64Array(spectrumLength(cut))
   forward.forward(window, spectrum)
-  for (let kx = 0, o = 0; kx <= cut; kx++) {
+  for (let kx = 0, o = 0; kx <= cut && !blurred; kx++) {
     for (let ky = -cut; ky <= cut; ky++, o += 2) {
       const fx = kx / n
       const fy = ky / n
@@ -71,7 +71,7 @@ function onePlane(stack: Float32Array, width: number, height: number, scene: Flo
     }
   }
   const model = at(best.dx, best.dy)
-  return { error: best.error, transfer: transferOf(stack, width, margin, w, h, model, fc) }
+  return { error: best.error, transfer: transferOf(stack, width, margin, w, h, model, fc, rings) }
 }
 
 let inverseCache: { plane: Float32Array, key: string } | null = null
@@ -137,7 +137,7 @@ function fitError(stack: Float32Array, width: number, margin: number, w: number,
 }
 
 /** Cross spectrum of stack and model over the model's power, in rings about 0.2 and 0.3 of the cut-off. */
-function transferOf(stack: Float32Array, width: number, margin: number, w: number, h: number, model: Float32Array, fc: number): [number, number] {
+function transferOf(stack: Float32Array, width: number, margin: number, w: number, h: number, model: Float32Array, fc: number, at: readonly number[]): number[] {
   const n = 256
   const cut = n / 2 - 1
   const forward = createForward(n, cut)
@@ -172,5 +172,5 @@ function transferOf(stack: Float32Array, width: number, margin: number, w: numbe
     return cross / power
   }
   const whole = ring(0.005, 0.05)
-  return [ring(0.18, 0.22) / whole, ring(0.28, 0.32) / whole]
+  return at.map(u => ring(u - 0.02, u + 0.02) / whole)
 }

@@ -24,7 +24,7 @@ export interface KnownCapture {
   references: References
   referenceSource: string
   /** Object before any blur, planes × height × width, for extended targets. */
-  sceneImage: { planes: Float32Array[], width: number, height: number } | null
+  sceneImage: { planes: Float32Array[], width: number, height: number, /** Seen through the perfect telescope already. */ blurred?: boolean } | null
   wavelengthsNm: number[]
 }
 
