@@ -110,7 +110,7 @@ export class Engine {
     const stacker = same?.stacker ?? new Stacker(ladder, ranking.order, refined.shifts, this.frames, surveyed.plan)
     const unchanged = same !== null && canonicalJson(same.optics) === canonicalJson(optics)
     const figurer = unchanged ? same.figurer : new Figurer({ stacker, ladder, order: ranking.order, peak: graded.table.peak, surveyed, optics })
-    const restorer = unchanged ? same.restorer : new Restorer({ stacker, ladder, surveyed, optics, frames: graded.table.count })
+    const restorer = unchanged ? same.restorer : new Restorer({ stacker, ladder, surveyed, optics, shifts: refined.shifts })
     this.#state = { recipe, measure: by, optics, keys, surveyed, graded, refined, ranking, ladder, stacker, figurer, restorer, proofs: unchanged ? same.proofs : null }
     const { counts, width, height, planes } = ladder
     if (counts.length > 0) emit({ kind: 'ladder', ladder: { counts, width, height, planes } })

@@ -1,7 +1,7 @@
 /** Restoration of the stacks of one run: measures what they hold, makes plans, carries them out. */
 import type { Optics, StackImage } from '../api'
 import { decompose } from '../restore/atrous'
-import { estimateBlur, type Blur, type Graded } from '../restore/blur'
+import { estimateBlur, motionOf, type Blur, type Graded } from '../restore/blur'
 import type { Pause, RadialCurve } from '../restore/convolve'
 import { overshootOf } from '../restore/guards'
 import { makePlan, ownNoise, robustSigma, type Measured } from '../restore/plan'
@@ -15,6 +15,7 @@ import { lambdaOverDPx } from '../../shared/optics'
 import { canonicalJson } from '../../shared/recipe/canonical'
 import type { Recipe } from '../../shared/schemas/recipe'
 import type { RestorePlan } from '../../shared/schemas/restoration'
+import type { ShiftTable } from './columns'
 import type { Ladder } from './ladder-pass'
 import type { Stacker } from './stacker'
 import type { Surveyed } from './survey-frames'
@@ -27,7 +28,7 @@ const FEWEST = 4
 const COLOURS = [1.13, 1, 0.85] as const
 const SCALES = 6
 
-export interface RestorerInput { stacker: Stacker, ladder: Ladder, surveyed: Surveyed, optics: Optics | null, frames: number }
+export interface RestorerInput { stacker: Stacker, ladder: Ladder, surveyed: Surveyed, optics: Optics | null, shifts: ShiftTable }
 
 export class Restorer {
   readonly #in: RestorerInput
@@ -60,7 +61,8 @@ export class Restorer {
   }
 
   async #measure(count: number, pause: Pause): Promise<Measured> {
-    const { stacker, ladder: { planes, width, height }, surveyed, frames } = this.#in
+    const { stacker, ladder: { planes, width, height }, surveyed, shifts } = this.#in
+    const frames = shifts.dx.length
     const star = surveyed.survey.kind === 'star'
     const rung = stacker.rungBelow(count)
     const fewer = Math.min(1, stacker.countOf(rung) / Math.max(1, count))
@@ -73,7 +75,7 @@ export class Restorer {
       if (spectra) for (let i = 0; i < spectra.noise.length; i++) spectra.noise[i]! *= fewer
       list.push({
         spectra, floor: surveyed.survey.background, scaleNoise: halves ? this.#scaleNoise(halves, p, Math.sqrt(fewer)) : ownNoise(image!.samples.subarray(p * width * height, (p + 1) * width * height), width, height),
-        blur: air && { apertureOverR0: air.apertureOverR0 * (planes === 3 ? colourFactor(p) : 1), error: air.error, lambdaPx: air.lambdaPx * (planes === 3 ? COLOURS[p]! : 1) },
+        blur: air && { ...air, apertureOverR0: air.apertureOverR0 * (planes === 3 ? colourFactor(p) : 1), lambdaPx: air.lambdaPx * (planes === 3 ? COLOURS[p]! : 1) },
         star: star ? this.#star(image!, p) : null,
       })
       await pause()
@@ -84,7 +86,8 @@ export class Restorer {
   /** D/r0 from the stacks of few and of all frames, of the green plane where there are colours. */
   async #blur(pause: Pause): Promise<Blur | null> {
     if (this.#air !== undefined) return this.#air
-    const { stacker, ladder: { counts, planes }, optics, frames } = this.#in
+    const { stacker, ladder: { counts, planes }, optics, shifts } = this.#in
+    const frames = shifts.dx.length
     const wanted = [...COMPARED.map(share => share * frames), stacker.ranked]
     const rungs = new Set(wanted.map(n => counts.reduce((best, count, k) => (Math.abs(count - n) < Math.abs(counts[best]! - n) ? k : best), 0)))
     const graded: Graded[] = []
@@ -94,7 +97,9 @@ export class Restorer {
       graded.push({ share: counts[rung]! / frames, spectra: this.#spectra(halves, planes === 3 ? 1 : 0) })
       await pause()
     }
-    this.#air = estimateBlur(graded, optics ? lambdaOverDPx(optics) : null)
+    const moved: { time: number, dx: number, dy: number }[] = []
+    shifts.setAside.forEach((code, time) => { if (code === 0) moved.push({ time, dx: shifts.dx[time]!, dy: shifts.dy[time]! }) })
+    this.#air = estimateBlur(graded, optics ? lambdaOverDPx(optics) : null, motionOf(moved))
     return this.#air
   }
 
