@@ -35,12 +35,13 @@ export function useBenchExport() {
     if (!core || !facts || !chosen || !kind || !average || !ladder || !provenance) throw new Error('The run is not finished yet: wait until the proofs are there.')
     const figures = await core.figures(bench.count)
     const restoration = await core.restorePlan(bench.count)
+    const evidence = await core.evidence()
     const proofs = proofFractions.map(fraction => bench.proofs.find(proof => proof.fraction === fraction)?.figures)
     if (proofs.some(proof => !proof)) throw new Error('The proofs are not all there yet.')
     return JSON.parse(JSON.stringify({
       facts, recipe: bench.recipe, recipeHash: await recipeHash(toRaw(bench.recipe)), kind, chosen,
       keep: { fraction: bench.recipe.keep.fraction, count: bench.count }, ranked: bench.ranked, setAside: bench.setAside,
-      figures, proofs, average: average.figures, ladder, stretch: bench.stretch, restoration, provenance,
+      figures, proofs, average: average.figures, ladder, stretch: bench.stretch, restoration, evidence, provenance,
     })) as RunResult
   }
 

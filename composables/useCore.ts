@@ -7,6 +7,7 @@ import { proxy, releaseProxy, wrap, type Remote } from 'comlink'
 import type { CaptureInput, CoreApi, ExportFile, ExportKind, FiledRun, FrameColumns, GuestApi, OpenAnswer, Optics, RunEvent, StackImage, WorkerApi } from '../workers/api'
 import type { CaptureOverrides } from '../shared/schemas/capture'
 import type { Recipe } from '../shared/schemas/recipe'
+import type { Evidence } from '../shared/schemas/evidence'
 import type { RestorePlan } from '../shared/schemas/restoration'
 import type { StackFigures } from '../shared/schemas/run'
 
@@ -127,6 +128,10 @@ export function useCore(): CoreHandle {
     async restorePlan(count: number) {
       const { api, call } = bound(live())
       return await call(api.restorePlan(count) as Promise<RestorePlan>)
+    },
+    async evidence() {
+      const { api, call } = bound(live())
+      return await call(api.evidence() as Promise<Evidence>)
     },
     async frame(index: number) {
       const { api, call } = bound(live())

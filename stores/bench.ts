@@ -4,6 +4,7 @@
  */
 import { defineStore } from 'pinia'
 import type { CaptureInput, FrameColumns, Optics, PassProgress, RunEvent, StackImage } from '~~/workers/api'
+import type { Evidence } from '~~/shared/schemas/evidence'
 import type { CaptureFacts, CaptureOverrides, TargetKind } from '~~/shared/schemas/capture'
 import { readRecipe } from '~~/shared/recipe/migrate'
 import { withRecipeValue } from '~~/shared/recipe/sentences'
@@ -48,6 +49,7 @@ export const useBenchStore = defineStore('bench', () => {
   const proofs = shallowRef<Proof[]>([])
   const average = shallowRef<{ image: StackImage, figures: StackFigures } | null>(null)
   const provenance = shallowRef<Provenance | null>(null)
+  const evidence = shallowRef<Evidence | null>(null)
 
   const image = shallowRef<StackImage | null>(null)
   const figures = shallowRef<StackFigures | null>(null)
@@ -70,7 +72,7 @@ export const useBenchStore = defineStore('bench', () => {
 
   function clearResults() {
     progress.value = null; columns.value = null; kind.value = null; chosen.value = null; noSignal.value = false; ranked.value = 0
-    setAside.value = {}; ladder.value = null; proofs.value = []; average.value = null; provenance.value = null
+    setAside.value = {}; ladder.value = null; proofs.value = []; average.value = null; provenance.value = null; evidence.value = null
     image.value = null; figures.value = null; stretchIsAuto.value = true
   }
 
@@ -127,6 +129,20 @@ export const useBenchStore = defineStore('bench', () => {
     await open(input.value, { ...overrides.value, ...next }, true)
   }
 
+  /** Asks for the evidence once the bench is at rest: it takes some seconds of the worker's time. */
+  async function gather(mine: number) {
+    do await new Promise(resolve => setTimeout(resolve, 400))
+    while (dragging.value && mine === runNumber)
+    if (mine !== runNumber || !core) return
+    try {
+      const found = await core.evidence()
+      if (mine !== runNumber) return
+      evidence.value = found
+      if (!found.signal) noSignal.value = true
+    }
+    catch { /* The next run asks again; the figures beside the stack do not depend on it. */ }
+  }
+
   let runNumber = 0
   async function run() {
     if (!core || !facts.value) return
@@ -138,7 +154,10 @@ export const useBenchStore = defineStore('bench', () => {
       if (mine !== runNumber) return
       progress.value = null
       phase.value = cancelled ? 'cancelled' : 'ready'
-      if (!cancelled) await follow()
+      if (!cancelled) {
+        await follow()
+        void gather(mine)
+      }
     }
     catch (error) {
       if (mine === runNumber) failed(error)
@@ -217,6 +236,7 @@ export const useBenchStore = defineStore('bench', () => {
       return follow()
     }
     ladder.value = null
+    evidence.value = null
     await run()
   }
 
@@ -321,7 +341,7 @@ export const useBenchStore = defineStore('bench', () => {
   watch(showRestored, () => follow())
 
   return {
-    phase, input, facts, overrides, extra, problem, resumed, recipe, saved, past, future, progress, columns, kind, chosen, noSignal, ranked, setAside, ladder, proofs, average, provenance,
+    phase, input, facts, overrides, extra, problem, resumed, recipe, saved, past, future, progress, columns, kind, chosen, noSignal, ranked, setAside, ladder, proofs, average, provenance, evidence,
     image, figures, stretch, stretchIsAuto, showRestored, dragging, count, optics, scale, restores, changed, busy,
     open, correct, run, change, edit, undo, redo, keep, endDrag, setStretch, applySaved, cancel, close, remember, exporter,
   }

@@ -4,6 +4,7 @@
  * used through composables/useCore.ts, the only module that touches comlink.
  */
 import type { CaptureFacts, CaptureOverrides, TargetKind } from '../shared/schemas/capture'
+import type { Evidence } from '../shared/schemas/evidence'
 import type { Recipe, ScoreMeasure } from '../shared/schemas/recipe'
 import type { RestoreMethod, RestorePlan } from '../shared/schemas/restoration'
 import type { DisplayStretch, LadderInfo, Provenance, RunResult, SetAsideReason, StackFigures } from '../shared/schemas/run'
@@ -114,6 +115,8 @@ export interface CoreApi {
   figures(count: number): Promise<StackFigures>
   /** What the recipe's restoration comes to for the best `count` frames; filed with a run. */
   restorePlan(count: number): Promise<RestorePlan>
+  /** The keep curve of the last run, from independent halves; computed when first asked for. */
+  evidence(): Promise<Evidence>
   /** One decoded frame (luminance as judged), for looking at a single exposure. */
   frame(index: number): Promise<StackImage>
   /** Files for saving or filing; `stretch` is used by the 8-bit views. */

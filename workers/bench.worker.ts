@@ -38,6 +38,7 @@ expose({
   cancel: () => session.cancel(),
   stack: async (count, restored, dragging) => handOver(await session.stack(count, restored, dragging)),
   figures: count => session.figures(count),
+  evidence: () => session.evidence(),
   restorePlan: count => session.restorePlan(count),
   frame: async index => handOver(await session.frame(index)),
   export: async (kinds, context) => {

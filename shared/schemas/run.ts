@@ -1,6 +1,7 @@
 /** A run: one recipe applied to one capture, with everything that came of it. */
 import { z } from 'zod'
 import { captureFactsSchema, targetKindSchema } from './capture'
+import { evidenceSchema } from './evidence'
 import { recipeSchema, scoreMeasures } from './recipe'
 import { restorePlanSchema } from './restoration'
 
@@ -82,6 +83,8 @@ export const runResultSchema = z.object({
   stretch: displayStretchSchema,
   /** What the recipe's restoration came to for the filed stack; absent in runs of older versions. */
   restoration: restorePlanSchema.optional(),
+  /** The keep curve and what confirms it; absent in runs of older versions. */
+  evidence: evidenceSchema.optional(),
   provenance: provenanceSchema,
 })
 

@@ -14,7 +14,7 @@ export interface RadialSpectra {
 }
 
 /** Largest side that is transformed; of larger images the middle. */
-const MOST = 1024
+const MOST = 512
 
 /**
  * Two half stacks of one plane. A Hann window over the middle 94 % keeps edges out. The bins are 2/n cycles per px wide, n the

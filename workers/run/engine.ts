@@ -7,6 +7,7 @@ import type { FrameReader } from '../decode/types'
 import { hasSimd } from '../kernels/index'
 import { makeRegisterPlan } from '../register/plan'
 import { canonicalJson } from '../../shared/recipe/canonical'
+import type { Evidence } from '../../shared/schemas/evidence'
 import { rankingMeasure, restoringMethod, type Recipe, type ScoreMeasure } from '../../shared/schemas/recipe'
 import type { RestorePlan } from '../../shared/schemas/restoration'
 import type { Provenance, StackFigures } from '../../shared/schemas/run'
@@ -14,6 +15,7 @@ import { engineName, lullVersion } from './version'
 import { averageImage } from './average'
 import { frameColumns, scoreColumn } from './columns'
 import type { PassContext } from './context'
+import { evidenceOf } from './evidence/index'
 import { Figurer } from './figures'
 import { FrameStore, type FrameStoreOptions } from './frames'
 import { gradePass, type Graded, type GradeProgress } from './grade-pass'
@@ -56,6 +58,7 @@ export interface RunState {
   optics: Optics | null
   /** Null until they are complete. */
   proofs: Proof[] | null
+  evidence: Promise<Evidence> | null
 }
 
 /** Bytes of a ladder that are kept beyond the page. */
@@ -111,7 +114,7 @@ export class Engine {
     const unchanged = same !== null && canonicalJson(same.optics) === canonicalJson(optics)
     const figurer = unchanged ? same.figurer : new Figurer({ stacker, ladder, order: ranking.order, peak: graded.table.peak, surveyed, optics })
     const restorer = unchanged ? same.restorer : new Restorer({ stacker, ladder, surveyed, optics, shifts: refined.shifts })
-    this.#state = { recipe, measure: by, optics, keys, surveyed, graded, refined, ranking, ladder, stacker, figurer, restorer, proofs: unchanged ? same.proofs : null }
+    this.#state = { recipe, measure: by, optics, keys, surveyed, graded, refined, ranking, ladder, stacker, figurer, restorer, proofs: unchanged ? same.proofs : null, evidence: unchanged ? same.evidence : null }
     const { counts, width, height, planes } = ladder
     if (counts.length > 0) emit({ kind: 'ladder', ladder: { counts, width, height, planes } })
     const state = this.#state
@@ -132,6 +135,13 @@ export class Engine {
   restorePlan(count: number): Promise<RestorePlan> {
     const { restorer, recipe } = this.#need()
     return restorer.plan(count, recipe.restore, pauseFor())
+  }
+
+  /** Evidence for the keep fraction of the last run; computed once. */
+  evidence(): Promise<Evidence> {
+    const state = this.#need()
+    state.evidence ??= evidenceOf(state, this.frames, pauseFor())
+    return state.evidence
   }
 
   async figures(count: number): Promise<StackFigures> {

@@ -53,6 +53,33 @@ export class Figurer {
     return stackFigures({ stack: samples, planes, mosaic, noise, count, fraction, plan: score, optics: this.#in.optics })
   }
 
+  /** Share of a star's light in its brightest pixel, and the share's relative standard error (null where too few frames tell it). */
+  core(image: StackImage): { share: number, error: number | null } {
+    const { width, height, planes } = this.#in.ladder
+    const at = this.#place(image.samples, planes)
+    const box = boxAbout(at.x, at.y, BOX, width, height)
+    const luminance = boxLuminance(image.samples, planes, width, height, box)
+    const { peak } = halfWidth(luminance, box.width, box.height, at.x - box.x0, at.y - box.y0, at.background, 0)
+    const light = this.#lightIn(box)(luminance)
+    const figures = this.#figures(image, 1, 0)
+    return { share: light > 0 ? Math.max(0, peak) / light : 0, error: this.#starErrors(image, { ...figures, strehl: 1 }).strehlErr }
+  }
+
+  /** What differs between halves about a star (within twice its full width), rms over its peak; null without halves. */
+  grain(image: StackImage, fwhmPx: number): number | null {
+    const { stacker, ladder: { width, height, planes } } = this.#in
+    const rung = stacker.rungBelow(image.count)
+    const halves = stacker.halves(rung)
+    if (!halves) return null
+    const at = this.#place(image.samples, planes)
+    const box = boxAbout(at.x, at.y, Math.max(8, Math.ceil(4 * fwhmPx)), width, height)
+    const [a, b] = halves.map(half => boxLuminance(half, planes, width, height, box)) as [Float32Array, Float32Array]
+    const { peak } = halfWidth(boxLuminance(image.samples, planes, width, height, box), box.width, box.height, at.x - box.x0, at.y - box.y0, at.background, 0)
+    let square = 0
+    for (let i = 0; i < a.length; i++) square += 0.25 * (a[i]! - b[i]!) ** 2
+    return peak > 0 ? Math.sqrt(square / a.length * stacker.countOf(rung) / image.count) / peak : null
+  }
+
   /** Standard errors of a star's width and Strehl ratio; see scatter.ts. Null where too few frames tell them. */
   #starErrors(image: StackImage, { fwhmPx, strehl }: StackFigures): { fwhmErrPx: number | null, strehlErr: number | null } {
     const none = { fwhmErrPx: null, strehlErr: null }

@@ -60,6 +60,15 @@ export class Restorer {
     return { ...image, samples, restored: true, restoration: reportOf(plan, overshoot, await this.#noiseGain(image.count, plan, pause), rounds) }
   }
 
+  /** Signal and noise by frequency of a rung's stack, of the green plane where there are colours; null without halves. */
+  spectra(rung: number): RadialSpectra | null {
+    const halves = this.#in.stacker.halves(rung)
+    return halves && this.#spectra(halves, this.#in.ladder.planes === 3 ? 1 : 0)
+  }
+
+  /** What the air does to an extended target, as measured; null where it cannot be told. */
+  air(pause: Pause): Promise<Blur | null> { return this.#blur(pause) }
+
   async #measure(count: number, pause: Pause): Promise<Measured> {
     const { stacker, ladder: { planes, width, height }, surveyed, shifts } = this.#in
     const frames = shifts.dx.length

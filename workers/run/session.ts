@@ -1,6 +1,7 @@
 import type { CaptureInput, CoreApi, ExportFile, ExportKind, OpenAnswer, Optics, RunEvent, StackImage } from '../api'
 import { CaptureError } from '../decode/types'
 import type { CaptureOverrides } from '../../shared/schemas/capture'
+import type { Evidence } from '../../shared/schemas/evidence'
 import type { Recipe } from '../../shared/schemas/recipe'
 import type { RestorePlan } from '../../shared/schemas/restoration'
 import type { StackFigures } from '../../shared/schemas/run'
@@ -76,6 +77,7 @@ export class Session implements CoreApi {
 
   figures(count: number): Promise<StackFigures> { return this.#need().figures(count) }
   restorePlan(count: number): Promise<RestorePlan> { return this.#need().restorePlan(count) }
+  evidence(): Promise<Evidence> { return this.#need().evidence() }
   frame(index: number): Promise<StackImage> { return this.#need().frame(index) }
   export(kinds: ExportKind[], context: ExportContext): Promise<ExportFile[]> { return exportFiles(this.#need(), kinds, context) }
 
