@@ -4,11 +4,12 @@
  * close, and starts a new one for the next call. Nothing else in the application touches comlink.
  */
 import { proxy, releaseProxy, wrap, type Remote } from 'comlink'
-import type { CaptureInput, CoreApi, ExportFile, ExportKind, FiledRun, FrameColumns, GuestApi, OpenAnswer, Optics, RunEvent, StackImage, WorkerApi } from '../workers/api'
+import type { CaptureInput, CoreApi, DriftAnswer, ExportFile, ExportKind, FiledRun, FrameColumns, GuestApi, OpenAnswer, Optics, RunEvent, StackImage, WorkerApi } from '../workers/api'
 import type { CaptureOverrides } from '../shared/schemas/capture'
 import type { Recipe } from '../shared/schemas/recipe'
 import type { Evidence } from '../shared/schemas/evidence'
 import type { RestorePlan } from '../shared/schemas/restoration'
+import type { MeasureRequest, MeasureResult } from '../shared/schemas/measure'
 import type { StackFigures } from '../shared/schemas/run'
 
 /** The worker stopped or was ended because it no longer answered. What the browser's store holds is safe; open the capture again. */
@@ -140,6 +141,14 @@ export function useCore(): CoreHandle {
     async export(kinds: ExportKind[], context) {
       const { api, call } = bound(live())
       return await call(api.export(kinds, plain(context)) as Promise<ExportFile[]>)
+    },
+    async measure(request: MeasureRequest) {
+      const { api, call } = bound(live())
+      return await call(api.measure(plain(request)) as Promise<MeasureResult>)
+    },
+    async drift(declinationDeg: number, onProgress: (done: number, total: number) => void) {
+      const { api, call } = bound(live())
+      return await call(api.drift(declinationDeg, proxy(onProgress)) as Promise<DriftAnswer>)
     },
     async close() {
       if (bridge && !bridge.stopped) await Promise.race([bridge.api.close(), new Promise(resolve => setTimeout(resolve, 500))]).catch(() => undefined)

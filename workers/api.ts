@@ -3,10 +3,12 @@
  * workers/bench.worker.ts (captures) and workers/guest.worker.ts (filed runs, from the ladder file);
  * used through composables/useCore.ts, the only module that touches comlink.
  */
+import type { DriftCalibration } from './measure/drift/types'
 import type { CaptureFacts, CaptureOverrides, TargetKind } from '../shared/schemas/capture'
 import type { Evidence } from '../shared/schemas/evidence'
 import type { Recipe, ScoreMeasure } from '../shared/schemas/recipe'
 import type { RestoreMethod, RestorePlan } from '../shared/schemas/restoration'
+import type { MeasureRequest, MeasureResult } from '../shared/schemas/measure'
 import type { DisplayStretch, LadderInfo, Provenance, RunResult, SetAsideReason, StackFigures } from '../shared/schemas/run'
 
 /** A capture to open: files picked by the user (one file, or the files of a folder in any order), or a demo. */
@@ -121,8 +123,14 @@ export interface CoreApi {
   frame(index: number): Promise<StackImage>
   /** Files for saving or filing; `stretch` is used by the 8-bit views. */
   export(kinds: ExportKind[], context: { recipe: Recipe, stretch: DisplayStretch, fraction: number, targetName: string, observer: string, recipeName: string | null }): Promise<ExportFile[]>
+  /** Measures a double or multiple star on the unrestored stack; see shared/schemas/measure.ts. A newer call ends an older one. */
+  measure(request: MeasureRequest): Promise<MeasureResult>
+  /** Scale and orientation from the open capture, taken with the drive off. An answer with words where it cannot be used. */
+  drift(declinationDeg: number, onProgress: (done: number, total: number) => void): Promise<DriftAnswer>
   close(): Promise<void>
 }
+
+export type DriftAnswer = { ok: true, drift: DriftCalibration } | { ok: false, message: string }
 
 /** A filed run to look at without its capture: the ladder file by HTTP ranges and the frame table. */
 export interface FiledRun {

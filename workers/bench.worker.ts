@@ -45,6 +45,16 @@ expose({
     const files = await session.export(kinds, context)
     return transfer(files, [...new Set(files.map(file => file.bytes.buffer as ArrayBuffer))])
   },
+  measure: request => session.measure(request),
+  drift: async (declinationDeg, onProgress) => {
+    const remote = onProgress as typeof onProgress & { [releaseProxy]?: () => void }
+    try {
+      return await session.drift(declinationDeg, (done, total) => { void remote(done, total) })
+    }
+    finally {
+      remote[releaseProxy]?.()
+    }
+  },
   close: () => session.close(),
   alive: () => Promise.resolve(true),
 } satisfies WorkerApi)

@@ -3,6 +3,7 @@ import { resolve } from 'node:path'
 import { parseArgs } from 'node:util'
 import { readRecipe } from '../../shared/recipe/migrate'
 import { withRecipeValue } from '../../shared/recipe/sentences'
+import { skyCalibrationSchema, type SkyCalibration } from '../../shared/astro/calibration'
 import { defaultRecipe, type Recipe } from '../../shared/schemas/recipe'
 
 /** Something the user gave cannot be used; the message is one plain line. */
@@ -19,9 +20,11 @@ export interface HeadlessInput {
   blockFrames: number | undefined
   /** A drift capture to calibrate by instead of a capture to stack. */
   drift: { declinationDeg: number, parity: 'normal' | 'mirrored' | null } | null
+  /** Stars to measure on the stack, and the calibration to do it with. */
+  measure: { components: 2 | 3, calibration: SkyCalibration | null } | null
 }
 
-const USAGE = 'Usage: npm run --silent headless -- CAPTURE --out DIR [--recipe FILE.json] [--keep 0.1] [--set path=value …] [--workers N], or -- CAPTURE --drift --dec DEG [--parity normal|mirrored] --out DIR'
+const USAGE = 'Usage: npm run --silent headless -- CAPTURE --out DIR [--recipe FILE.json] [--keep 0.1] [--set path=value …] [--workers N] [--measure 2|3 [--calibration FILE.json]], or -- CAPTURE --drift --dec DEG [--parity normal|mirrored] --out DIR'
 
 export async function readInput(argv: string[]): Promise<HeadlessInput> {
   const { values, positionals } = parse(argv)
@@ -33,6 +36,7 @@ export async function readInput(argv: string[]): Promise<HeadlessInput> {
     recipe: await recipeOf(values),
     workers: whole(values.workers ?? '1', '--workers', 1, 64),
     drift: driftOf(values),
+    measure: await measureOf(values),
     blockFrames: values['block-frames'] === undefined ? undefined : whole(values['block-frames'], '--block-frames', 1, 100_000),
   }
 }
@@ -44,7 +48,7 @@ function parse(argv: string[]) {
       options: {
         out: { type: 'string' }, recipe: { type: 'string' }, keep: { type: 'string' }, set: { type: 'string', multiple: true },
         workers: { type: 'string' }, 'block-frames': { type: 'string' },
-        drift: { type: 'boolean' }, dec: { type: 'string' }, parity: { type: 'string' },
+        drift: { type: 'boolean' }, dec: { type: 'string' }, parity: { type: 'string' }, measure: { type: 'string' }, calibration: { type: 'string' },
       },
     })
   }
@@ -63,6 +67,21 @@ function driftOf({ drift, dec, parity }: { drift?: boolean, dec?: string, parity
   if (Math.abs(declinationDeg) > 90) throw new InputError(`A declination lies between −90° and 90°; "${dec}" does not.`)
   if (parity !== undefined && parity !== 'normal' && parity !== 'mirrored') throw new InputError(`--parity is "normal" or "mirrored", not "${parity}".`)
   return { declinationDeg, parity: parity ?? null }
+}
+
+async function measureOf({ measure, calibration, drift }: { measure?: string, calibration?: string, drift?: boolean }): Promise<HeadlessInput['measure']> {
+  if (measure === undefined) {
+    if (calibration !== undefined) throw new InputError(`--calibration belongs to --measure. ${USAGE}`)
+    return null
+  }
+  if (drift) throw new InputError('--drift and --measure are two different jobs: run them one after the other.')
+  if (measure !== '2' && measure !== '3') throw new InputError(`--measure takes 2 or 3 stars, not "${measure}".`)
+  const components = measure === '2' ? 2 : 3
+  if (calibration === undefined) return { components, calibration: null }
+  const text = await readFile(calibration, 'utf8').catch(() => { throw new InputError(`The calibration "${calibration}" cannot be read.`) })
+  const data = skyCalibrationSchema.safeParse(parsed(text, calibration, 'calibration'))
+  if (!data.success) throw new InputError(`The calibration "${calibration}" cannot be used: ${data.error.issues[0]!.path.join('.') || 'it'}: ${data.error.issues[0]!.message}.`)
+  return { components, calibration: data.data }
 }
 
 /** Results replace those of an earlier run, but never anything else. */
@@ -90,12 +109,12 @@ async function recipeOf(values: { recipe?: string, keep?: string, set?: string[]
   }
 }
 
-function parsed(text: string, name: string): unknown {
+function parsed(text: string, name: string, what = 'recipe'): unknown {
   try {
     return JSON.parse(text)
   }
   catch {
-    throw new InputError(`The recipe "${name}" is not JSON.`)
+    throw new InputError(`The ${what} "${name}" is not JSON.`)
   }
 }
 

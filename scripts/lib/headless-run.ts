@@ -2,6 +2,8 @@ import { mkdir, mkdtemp, rename, rm, writeFile } from 'node:fs/promises'
 import { dirname, join } from 'node:path'
 import { recipeHash } from '../../shared/recipe/canonical'
 import { keepCount } from '../../shared/schemas/run'
+import { onSky } from '../../shared/astro/calibration'
+import { measurePair } from '../../workers/run/measure'
 import { openCapture } from '../../workers/decode/index'
 import { Engine } from '../../workers/run/engine'
 import { exportFiles } from '../../workers/run/export'
@@ -49,7 +51,7 @@ function nothingLeft(frames: number, why: string): string {
   return `None of the ${frames} frames can be used${why ? `: ${why}` : '; all were set aside as empty, saturated or out of the field.'}`
 }
 
-async function results(engine: Engine, { recipe }: HeadlessInput): Promise<Map<string, Uint8Array | string>> {
+async function results(engine: Engine, { recipe, measure }: HeadlessInput): Promise<Map<string, Uint8Array | string>> {
   const { stacker } = engine.state!
   const count = keepCount(recipe.keep.fraction, stacker.ranked)
   const hash = await recipeHash(recipe)
@@ -58,8 +60,20 @@ async function results(engine: Engine, { recipe }: HeadlessInput): Promise<Map<s
   const named = new Map<string, Uint8Array | string>()
   const names: Record<string, string> = { stack: 'stack.fits', average: 'average.fits', frames: 'frames.csv' }
   for (const file of files) named.set(names[file.role]!, file.bytes)
-  named.set('result.json', `${JSON.stringify({ ...result, timings: result.provenance.timings }, null, 2)}\n`)
+  named.set('result.json', `${JSON.stringify({ ...result, timings: result.provenance.timings, ...await measures(engine, recipe.keep.fraction, measure) }, null, 2)}\n`)
   return named
+}
+
+/**
+ * `measures`: each component against the first, on the screen, and with a calibration on the sky (then paDeg is the position
+ * angle); empty where nothing could be measured. `measure`: the whole of it, with stability and warnings, or why there is none.
+ */
+async function measures(engine: Engine, fraction: number, wanted: HeadlessInput['measure']): Promise<object> {
+  if (!wanted) return {}
+  const measure = await measurePair(engine.state!, { components: wanted.components, fraction })
+  if (measure.kind !== 'measured') return { measures: [], measure }
+  const { calibration } = wanted
+  return { measures: measure.values.map(value => (calibration ? { ...value, screenPaDeg: value.paDeg, ...onSky(value, calibration) } : value)), measure, ...(calibration ? { calibration } : {}) }
 }
 
 /** Writes into a folder beside the target and renames file by file, so that no file is ever half there. */

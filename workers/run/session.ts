@@ -1,11 +1,14 @@
-import type { CaptureInput, CoreApi, ExportFile, ExportKind, OpenAnswer, Optics, RunEvent, StackImage } from '../api'
+import type { CaptureInput, CoreApi, DriftAnswer, ExportFile, ExportKind, OpenAnswer, Optics, RunEvent, StackImage } from '../api'
 import { CaptureError } from '../decode/types'
 import type { CaptureOverrides } from '../../shared/schemas/capture'
 import type { Evidence } from '../../shared/schemas/evidence'
+import type { MeasureRequest, MeasureResult } from '../../shared/schemas/measure'
 import type { Recipe } from '../../shared/schemas/recipe'
 import type { RestorePlan } from '../../shared/schemas/restoration'
 import type { StackFigures } from '../../shared/schemas/run'
+import { calibrateDrift, DriftError } from '../measure/drift/index'
 import { Engine } from './engine'
+import { measurePair } from './measure'
 import { exportFiles, type ExportContext } from './export'
 import { openInput } from './open'
 import type { Pool } from './pool'
@@ -20,6 +23,7 @@ export class Session implements CoreApi {
   #pool: Pool | null = null
   #running: AbortController | null = null
   #stacking: AbortController | null = null
+  #measuring: AbortController | null = null
   #finished: Promise<unknown> = Promise.resolve()
 
   constructor(options: SessionOptions) { this.#options = options }
@@ -81,7 +85,38 @@ export class Session implements CoreApi {
   frame(index: number): Promise<StackImage> { return this.#need().frame(index) }
   export(kinds: ExportKind[], context: ExportContext): Promise<ExportFile[]> { return exportFiles(this.#need(), kinds, context) }
 
+  async measure(request: MeasureRequest): Promise<MeasureResult> {
+    this.#measuring?.abort()
+    const controller = this.#measuring = new AbortController()
+    const { state } = this.#need()
+    if (!state) throw new Error('Nothing is stacked yet: run the recipe first.')
+    return await measurePair(state, request, controller.signal)
+  }
+
+  async drift(declinationDeg: number, onProgress: (done: number, total: number) => void): Promise<DriftAnswer> {
+    await this.cancel()
+    this.#measuring?.abort()
+    const controller = this.#measuring = new AbortController()
+    try {
+      let last = 0
+      const drift = await calibrateDrift(this.#need().reader, declinationDeg, {
+        signal: controller.signal,
+        onProgress: (done, total) => {
+          if (performance.now() - last < 100) return
+          last = performance.now()
+          onProgress(done, total)
+        },
+      })
+      return { ok: true, drift }
+    }
+    catch (reason) {
+      if (reason instanceof DriftError) return { ok: false, message: reason.message }
+      throw reason
+    }
+  }
+
   async close(): Promise<void> {
+    this.#measuring?.abort()
     await this.cancel()
     this.#engine?.close()
     this.#engine = null

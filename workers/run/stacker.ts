@@ -63,6 +63,47 @@ export class Stacker {
     return wanted
   }
 
+  /**
+   * Means of the best `count` frames in groups that follow each other in time, of as equal a size as can be: independent looks
+   * at the same target. `visit` gets each mean; the samples are its own.
+   */
+  blocks(count: number, groups: number, visit: (image: StackImage, block: number) => void, signal?: AbortSignal): Promise<void> {
+    const wanted = Math.max(0, Math.min(this.ranked, Math.round(count)))
+    const inTime = this.#order.slice(0, wanted).sort()
+    const made = this.#queue.then(async () => {
+      for (let block = 0; block < groups; block++) {
+        const frames = inTime.subarray(Math.floor(block * wanted / groups), Math.floor((block + 1) * wanted / groups))
+        if (frames.length > 0) visit(await this.#meanOf(frames, signal), block)
+      }
+    })
+    this.#queue = made.catch(() => undefined)
+    return made
+  }
+
+  async #meanOf(frames: Int32Array, signal?: AbortSignal): Promise<StackImage> {
+    const { width, height, planes, scale, kernel } = this.#ladder
+    const sum = new Float64Array(this.#small.length)
+    const marks = coverageMarks(width, height)
+    this.#small.fill(0)
+    let room = 0
+    for (const frame of frames) {
+      signal?.throwIfAborted()
+      const [dx, dy] = [this.#shifts.dx[frame]!, this.#shifts.dy[frame]!]
+      addFrame(this.#adder, await this.#frames.frame(frame, signal), 0, dx, dy, 1, this.#small)
+      markCovered(marks, width, coveredBy(kernel, width, height, dx, dy), 1)
+      if (++room === FIXED_FRAMES) {
+        addInto(sum, this.#small)
+        this.#small.fill(0)
+        room = 0
+      }
+    }
+    addInto(sum, this.#small)
+    const covered = coverageCounts(marks, width, height)
+    const samples = meanOf(sum, covered, scale, planes)
+    fillUncovered(samples, covered, width, height, planes)
+    return { width, height, planes, samples, count: frames.length, restored: false }
+  }
+
   async #moveTo(wanted: number, signal?: AbortSignal): Promise<void> {
     const from = this.#nearest(wanted)
     if (from.sum && from.sum !== this.#sum) this.#sum.set(from.sum)

@@ -1,0 +1,73 @@
+/**
+ * A measure of a double or multiple star on a stack. Angles on the screen run from up (towards row 0) counter-clockwise
+ * through left, degrees; that is the position angle where north is up and east is left. Errors are standard errors.
+ */
+import { z } from 'zod'
+
+const angleSchema = z.number().min(0).lt(360)
+const errorSchema = z.number().nonnegative()
+
+/** One component against the first (the brightest). */
+export const pairValuesSchema = z.object({
+  sepPx: z.number().nonnegative(), sepPxErr: errorSchema,
+  paDeg: angleSchema, paDegErr: errorSchema,
+  /** Magnitudes fainter than the first. */
+  dMag: z.number(), dMagErr: errorSchema,
+})
+
+/** `undetermined` where the components are too alike to tell which is the brighter: the angle may be off by 180°. */
+export const quadrants = ['determined', 'undetermined'] as const
+
+export const stabilityRowSchema = z.object({
+  /** Which frames: a keep fraction, or one half in time, of the frames kept. */
+  of: z.union([z.object({ fraction: z.number() }), z.object({ half: z.enum(['first', 'second']) })]),
+  frames: z.number().int().nonnegative(),
+  /** In the order of the measure's components; null where the fit did not settle. */
+  values: z.array(pairValuesSchema).nullable(),
+})
+
+export const measureWarningSchema = z.object({ code: z.string(), text: z.string() })
+
+export const pairMeasureSchema = z.object({
+  kind: z.literal('measured'),
+  /** Frames in the stack, and the keep fraction asked for. */
+  frames: z.number().int().positive(), fraction: z.number(),
+  /** Blocks of time that the errors come from; 0 where there were too few frames and the errors are the fit's own. */
+  blocks: z.number().int().nonnegative(),
+  /** Places on the stack, px; fluxes relative to the first. */
+  components: z.array(z.object({ x: z.number(), y: z.number(), flux: z.number() })).min(2),
+  /** Of each component but the first. */
+  values: z.array(pairValuesSchema.extend({ quadrant: z.enum(quadrants) })).min(1),
+  /** Whether the components were found without hints. */
+  blind: z.boolean(),
+  fwhmPx: z.number().positive(),
+  /** Peak of the first component over the noise of the sky, from halves that were not aligned on each other's noise. */
+  signalToNoise: z.number().nonnegative(),
+  stability: z.array(stabilityRowSchema),
+  warnings: z.array(measureWarningSchema),
+})
+
+/** Nothing to measure, and why; `limits`: magnitudes fainter than the star that a companion at that distance could have and be missed. */
+export const noMeasureSchema = z.object({
+  kind: z.enum(['no-signal', 'unresolved']),
+  frames: z.number().int().nonnegative(), fraction: z.number(),
+  text: z.string(),
+  fwhmPx: z.number().positive().nullable(),
+  limits: z.array(z.object({ sepPx: z.number(), dMag: z.number() })),
+})
+
+export const measureResultSchema = z.discriminatedUnion('kind', [pairMeasureSchema, noMeasureSchema])
+
+export type PairValues = z.infer<typeof pairValuesSchema>
+export type StabilityRow = z.infer<typeof stabilityRowSchema>
+export type PairMeasure = z.infer<typeof pairMeasureSchema>
+export type NoMeasure = z.infer<typeof noMeasureSchema>
+export type MeasureResult = z.infer<typeof measureResultSchema>
+
+export interface MeasureRequest {
+  /** How many stars, 2 or 3. */
+  components: 2 | 3
+  fraction: number
+  /** Places to begin with, px on the stack; without them the stars are found blind. */
+  hints?: { x: number, y: number }[]
+}
