@@ -4,7 +4,7 @@
  * close, and starts a new one for the next call. Nothing else in the application touches comlink.
  */
 import { proxy, releaseProxy, wrap, type Remote } from 'comlink'
-import type { CaptureInput, CoreApi, DriftAnswer, ExportFile, ExportKind, FiledRun, FrameColumns, GuestApi, OpenAnswer, Optics, RunEvent, StackImage, WorkerApi } from '../workers/api'
+import type { CaptureInput, CoreApi, DriftAnswer, ExportFile, ExportKind, FiledRun, FrameColumns, GuestApi, OpenAnswer, Optics, Part, RunEvent, StackImage, WorkerApi } from '../workers/api'
 import type { CaptureOverrides } from '../shared/schemas/capture'
 import type { Recipe } from '../shared/schemas/recipe'
 import type { Evidence } from '../shared/schemas/evidence'
@@ -118,9 +118,9 @@ export function useCore(): CoreHandle {
     async cancel() {
       if (bridge && !bridge.stopped) await bridge.call(bridge.api.cancel() as Promise<void>)
     },
-    async stack(count: number, restored: boolean, dragging = false) {
+    async stack(count: number, restored: boolean, dragging = false, part: Part | null = null) {
       const { api, call } = bound(live())
-      return await call(api.stack(count, restored, dragging) as Promise<StackImage>)
+      return await call(api.stack(count, restored, dragging, plain(part)) as Promise<StackImage>)
     },
     async figures(count: number) {
       const { api, call } = bound(live())

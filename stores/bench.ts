@@ -3,7 +3,7 @@
  * the stack on the screen. Owns the core's handle; the screens only look and call.
  */
 import { defineStore } from 'pinia'
-import type { CaptureInput, FrameColumns, Optics, PassProgress, RunEvent, StackImage } from '~~/workers/api'
+import type { CaptureInput, FrameColumns, Optics, Part, PassProgress, RunEvent, StackImage } from '~~/workers/api'
 import type { Evidence } from '~~/shared/schemas/evidence'
 import type { CaptureFacts, CaptureOverrides, TargetKind } from '~~/shared/schemas/capture'
 import { readRecipe } from '~~/shared/recipe/migrate'
@@ -21,6 +21,8 @@ export interface OpticsExtra { obstruction: number, wavelengthNm: number, instru
 export interface Proof { fraction: number, image: StackImage, figures: StackFigures }
 
 const HISTORY = 200
+/** Pixels of a picture that is restored part by part. */
+const LARGE = 1_000_000
 const keepsOnly = (a: Recipe, b: Recipe) => JSON.stringify({ ...a, keep: 0, restore: 0 }) === JSON.stringify({ ...b, keep: 0, restore: 0 })
 
 export const useBenchStore = defineStore('bench', () => {
@@ -57,6 +59,8 @@ export const useBenchStore = defineStore('bench', () => {
   const stretchIsAuto = ref(true)
   const showRestored = ref(true)
   const dragging = ref(false)
+  /** The part of the picture on the screen, whole px. */
+  const visible = shallowRef<Part | null>(null)
 
   const count = computed(() => keepCount(recipe.value.keep.fraction, ranked.value))
   const optics = computed<Optics | null>(() => {
@@ -192,24 +196,36 @@ export const useBenchStore = defineStore('bench', () => {
 
   /** Asks for the wanted stack; while one is on its way only the last wish counts. The count shown is the image's own. */
   let following = false
+  let slow = false
   let wish = ''
+  const wishNow = () => `${count.value} ${showRestored.value && restores.value} ${dragging.value} ${JSON.stringify(recipe.value.restore)}`
+  /** A large picture is restored where it is looked at first. */
+  const partFirst = (restored: boolean) => restored && !dragging.value && visible.value !== null && image.value !== null
+    && image.value.width * image.value.height > LARGE && visible.value.width * visible.value.height < 0.7 * image.value.width * image.value.height
   async function follow() {
-    if (following || !core || !ladder.value) return
+    if (following) {
+      // A restoration of seconds must not keep the slider waiting: a newer question ends it.
+      if (slow && core && wishNow() !== wish) void core.stack(count.value, false, true).catch(() => undefined)
+      return
+    }
+    if (!core || !ladder.value) return
     following = true
     try {
       for (;;) {
         const restored = showRestored.value && restores.value
-        const wanted = `${count.value} ${restored} ${dragging.value} ${JSON.stringify(recipe.value.restore)}`
+        const wanted = wishNow()
         if (wanted === wish && image.value?.count === count.value) break
         if (wanted === wish && dragging.value) break
         wish = wanted
+        slow = restored && !dragging.value
         try {
-          show(await core.stack(count.value, restored, dragging.value))
+          if (partFirst(restored)) show(await core.stack(count.value, restored, false, visible.value))
+          if (wishNow() === wanted) show(await core.stack(count.value, restored, dragging.value))
         }
         catch (error) {
           if ((error as Error).name !== 'AbortError') throw error
         }
-        if (`${count.value} ${restored} ${dragging.value} ${JSON.stringify(recipe.value.restore)}` === wanted) break
+        if (wishNow() === wanted) break
       }
       if (!dragging.value && image.value) figures.value = await core.figures(image.value.count)
     }
@@ -218,6 +234,7 @@ export const useBenchStore = defineStore('bench', () => {
     }
     finally {
       following = false
+      slow = false
       if (core && ladder.value && image.value && !dragging.value && image.value.count !== count.value) {
         wish = ''
         void follow()
@@ -342,7 +359,7 @@ export const useBenchStore = defineStore('bench', () => {
 
   return {
     phase, input, facts, overrides, extra, problem, resumed, recipe, saved, past, future, progress, columns, kind, chosen, noSignal, ranked, setAside, ladder, proofs, average, provenance, evidence,
-    image, figures, stretch, stretchIsAuto, showRestored, dragging, count, optics, scale, restores, changed, busy,
+    image, figures, stretch, stretchIsAuto, showRestored, dragging, visible, count, optics, scale, restores, changed, busy,
     open, correct, run, change, edit, undo, redo, keep, endDrag, setStretch, applySaved, cancel, close, remember, exporter,
   }
 })

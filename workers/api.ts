@@ -76,6 +76,9 @@ export interface StackImage {
   restoration?: RestorationReport
 }
 
+/** Whole px within an image. */
+export interface Part { x: number, y: number, width: number, height: number }
+
 /** What a restoration did and what it cost; see workers/restore/guards.ts for the overshoot's figures. */
 export interface RestorationReport {
   method: RestoreMethod
@@ -111,8 +114,10 @@ export interface CoreApi {
    * With `dragging` it may be the stack of the nearest rung, where the exact one would have to read the file:
    * show the image's own `count`, and ask again without `dragging` on release. A newer call ends an older
    * one that is not finished; the older one then rejects with an AbortError.
+   * With `part` only that part of the picture needs to be restored (the rest may be as it was): a large picture is
+   * asked for by its visible part first, then whole.
    */
-  stack(count: number, restored: boolean, dragging?: boolean): Promise<StackImage>
+  stack(count: number, restored: boolean, dragging?: boolean, part?: Part | null): Promise<StackImage>
   /** Figures of a stack of `count` frames. */
   figures(count: number): Promise<StackFigures>
   /** What the recipe's restoration comes to for the best `count` frames; filed with a run. */

@@ -36,7 +36,7 @@ expose({
     }
   },
   cancel: () => session.cancel(),
-  stack: async (count, restored, dragging) => handOver(await session.stack(count, restored, dragging)),
+  stack: async (count, restored, dragging, part) => handOver(await session.stack(count, restored, dragging, part)),
   figures: count => session.figures(count),
   evidence: () => session.evidence(),
   restorePlan: count => session.restorePlan(count),

@@ -2,6 +2,7 @@ import { describe, expect, it } from 'vitest'
 import { decompose, waveletNoise } from '../../workers/restore/atrous'
 import { overshootOf } from '../../workers/restore/guards'
 import { ownNoise } from '../../workers/restore/plan'
+import { restore } from '../../workers/restore/restore'
 import { sharpenPlane } from '../../workers/restore/wavelets'
 
 /** Normal deviates from a seeded generator (mulberry32 and Box-Muller). */
@@ -78,6 +79,19 @@ describe('restoration by wavelets', () => {
     expect(Math.abs(ownNoise(grain, n, n)[0]! / (7 * waveletNoise[0]) - 1)).toBeLessThan(0.03)
     expect(sharpen(grain, [4, 4], [6 * 7, 6 * 7])).toEqual(grain)
     expect(deviation(sharpen(grain, [4, 4], [0, 0]))).toBeGreaterThan(3 * 7)
+  })
+})
+
+describe('a large image', () => {
+  it('comes out tile by tile as in one piece', async () => {
+    const width = 1100
+    const height = 140
+    const image = noise(width * height, 21)
+    const how = { gains: [0.5, 3, 2, 1.5, 1.2, 1.1], thresholds: [0, 0.2, 0.1, 0, 0, 0], curve: null, floor: 0, noise: 1 }
+    const whole = new Float32Array(width * height)
+    sharpenPlane(image, width, height, how, whole)
+    const { samples } = await restore(image, width, height, 1, { method: 'wavelets', reason: '', planes: [how], iterations: 0, stopAtNoise: false, strehl: null, apertureOverR0: null }, () => Promise.resolve())
+    expect(samples).toEqual(whole)
   })
 })
 

@@ -75,6 +75,7 @@ export async function richardsonLucy(data: Float32Array, u: Float32Array, blur: 
       factor[i] = blurred[i]! > least ? data[i]! / blurred[i]! : data[i]! > least ? 1 : 0
     }
     if (noise > 0 && square <= noise * noise * size) return round
+    await pause()
     blur.apply(factor, blurred)
     for (let i = 0; i < size; i++) u[i] = Math.max(0, u[i]! * blurred[i]!)
     await pause()

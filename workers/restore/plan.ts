@@ -85,8 +85,8 @@ export function robustSigma(values: Float32Array): number {
   return sorted.length === 0 ? 0 : 1.4826 * 0.5 * (sorted[(sorted.length - 1) >> 1]! + sorted[sorted.length >> 1]!)
 }
 
-/** Gains to a thousandth: what is shown is what is used. */
-const round = (gain: number): number => Math.round(gain * 1000) / 1000
+/** Gains to a thousandth; within 2 % of 1 a scale is left as it is. */
+const round = (gain: number): number => (Math.abs(gain - 1) < 0.02 ? 1 : Math.round(gain * 1000) / 1000)
 
 function transferOf(restore: Recipe['restore'], { kind, share }: Measured, plane: MeasuredPlane): ((f: number) => number) | null {
   if (restore.psf === 'analytic') return coreAndHalo(restore.psfCore, restore.psfHaloPx)

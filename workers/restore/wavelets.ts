@@ -17,7 +17,10 @@ export function sharpenPlane(image: Float32Array, width: number, height: number,
   let smooth = image
   let next: Float32Array = new Float32Array(image.length)
   out.set(image)
-  for (let j = 0; j < gains.length; j++) {
+  // Coarse scales that are left as they are need not be made.
+  let last = gains.length
+  while (last > 0 && gains[last - 1] === 1) last--
+  for (let j = 0; j < last; j++) {
     smoothB3(smooth, width, height, 2 ** j, next, scratch)
     const more = gains[j]! - 1
     const threshold = more > 0 ? thresholds[j] ?? 0 : 0

@@ -2,7 +2,7 @@
  * Runs a capture through the passes of a recipe, keeps what each pass found under a content key, and makes
  * stacks of any count. One engine per open capture. Knows neither threads nor storage: both are handed in.
  */
-import type { Optics, Pass, RunEvent, StackImage } from '../api'
+import type { Optics, Part, Pass, RunEvent, StackImage } from '../api'
 import type { FrameReader } from '../decode/types'
 import { hasSimd } from '../kernels/index'
 import { makeRegisterPlan } from '../register/plan'
@@ -124,11 +124,11 @@ export class Engine {
   }
 
   /** The mean of exactly the best `count` frames (dragging: or of the nearest rung); restored as the last run's recipe says where asked. */
-  async stack(count: number, restored: boolean, signal?: AbortSignal, dragging = false): Promise<StackImage> {
+  async stack(count: number, restored: boolean, signal?: AbortSignal, dragging = false, part: Part | null = null): Promise<StackImage> {
     const { stacker, recipe, restorer, surveyed } = this.#need()
     const image = await stacker.stack(dragging ? stacker.nearAtHand(count) : count, signal)
     if (!restored || restoringMethod(recipe.restore.method, surveyed.survey.kind) === 'nothing') return image
-    return await restorer.restored(image, recipe.restore, pauseFor(signal), dragging)
+    return await restorer.restored(image, recipe.restore, pauseFor(signal), dragging, part)
   }
 
   /** The numbers that the last run's restoration comes to for the best `count` frames. */

@@ -1,5 +1,5 @@
 /** Restoration of the stacks of one run: measures what they hold, makes plans, carries them out. */
-import type { Optics, StackImage } from '../api'
+import type { Optics, Part, StackImage } from '../api'
 import { decompose } from '../restore/atrous'
 import { estimateBlur, motionOf, type Blur, type Graded } from '../restore/blur'
 import type { Pause, RadialCurve } from '../restore/convolve'
@@ -7,7 +7,7 @@ import { overshootOf } from '../restore/guards'
 import { makePlan, ownNoise, robustSigma, type Measured } from '../restore/plan'
 import { againstTelescope, profileTransfer, radialProfile } from '../restore/psf'
 import { reportOf } from '../restore/report'
-import { restore } from '../restore/restore'
+import { restore, WAVELET_REACH } from '../restore/restore'
 import { radialSpectra, type RadialSpectra } from '../restore/spectra'
 import { halvesNoise, stackLuminance } from '../score/figures'
 import { createScorer, emptyScore } from '../score/scorer'
@@ -27,6 +27,10 @@ const FEWEST = 4
 /** Wavelengths of the colour planes over that of the optics: usual filters, common practice, no source. */
 const COLOURS = [1.13, 1, 0.85] as const
 const SCALES = 6
+/** Samples that are restored within a screen refresh or two, while the slider is dragged. */
+const LIVE = 400_000
+/** Largest side of what is measured on: of larger images the middle. */
+const MIDDLE = 1024
 
 export interface RestorerInput { stacker: Stacker, ladder: Ladder, surveyed: Surveyed, optics: Optics | null, shifts: ShiftTable }
 
@@ -49,15 +53,41 @@ export class Restorer {
     return plan
   }
 
-  /** A stack restored, with the figures of the guards; the stack itself where nothing is restored. */
-  async restored(image: StackImage, how: Recipe['restore'], pause: Pause, dragging: boolean): Promise<StackImage> {
-    const plan = await this.plan(image.count, how, pause, dragging)
+  /**
+   * A stack restored, with the figures of the guards; the stack itself where nothing is restored. While a hand is on the slider
+   * only what is quick is done, and the rest waits for the hand to rest. With `part` that part is restored, and no more.
+   */
+  async restored(image: StackImage, how: Recipe['restore'], pause: Pause, dragging: boolean, part: Part | null = null): Promise<StackImage> {
     const { width, height, planes } = image
+    if (dragging && width * height * planes > LIVE) return image
+    const plan = await this.plan(image.count, how, pause, dragging)
     if (plan.method === 'nothing') return { ...image, restoration: reportOf(plan, null, null, 0) }
+    if (dragging && plan.method !== 'wavelets') return image
+    if (part) return { ...image, samples: await this.#inPart(image, plan, part, pause), restored: true }
     const { samples, rounds } = await restore(image.samples, width, height, planes, plan, pause)
     if (dragging) return { ...image, samples, restored: true }
-    const overshoot = overshootOf(image.samples, samples, width, height, planes, this.#in.surveyed.survey.form === 'disc')
+    const w = Math.min(MIDDLE, width)
+    const h = Math.min(MIDDLE, height)
+    const [before, after] = [image.samples, samples].map(each => cutOf(each, planes, width, height, (width - w) >> 1, (height - h) >> 1, w, h)) as [Float32Array, Float32Array]
+    const overshoot = overshootOf(before, after, w, h, planes, this.#in.surveyed.survey.form === 'disc')
     return { ...image, samples, restored: true, restoration: reportOf(plan, overshoot, await this.#noiseGain(image.count, plan, pause), rounds) }
+  }
+
+  /** The samples with one part of the picture restored; a margin around it is worked on and thrown away, so that the part comes out as in the whole. */
+  async #inPart({ samples, width, height, planes }: StackImage, plan: RestorePlan, part: Part, pause: Pause): Promise<Float32Array> {
+    const x0 = Math.max(0, part.x - WAVELET_REACH)
+    const y0 = Math.max(0, part.y - WAVELET_REACH)
+    const w = Math.min(width, part.x + part.width + WAVELET_REACH) - x0
+    const h = Math.min(height, part.y + part.height + WAVELET_REACH) - y0
+    const { samples: sharper } = await restore(cutOf(samples, planes, width, height, x0, y0, w, h), w, h, planes, plan, pause)
+    const out = samples.slice()
+    for (let p = 0; p < planes; p++) {
+      for (let y = part.y; y < part.y + part.height; y++) {
+        const from = (p * h + y - y0) * w + part.x - x0
+        out.set(sharper.subarray(from, from + part.width), (p * height + y) * width + part.x)
+      }
+    }
+    return out
   }
 
   /** Signal and noise by frequency of a rung's stack, of the green plane where there are colours; null without halves. */
@@ -122,9 +152,10 @@ export class Restorer {
   #scaleNoise(halves: [Float32Array, Float32Array], plane: number, factor: number): number[] {
     const { width, height } = this.#in.ladder
     const size = width * height
-    const from = plane * size
-    const half = Float32Array.from({ length: size }, (_, i) => 0.5 * factor * (halves[0][from + i]! - halves[1][from + i]!))
-    return decompose(half, width, height, SCALES).details.map(robustSigma)
+    const w = Math.min(MIDDLE, width)
+    const h = Math.min(MIDDLE, height)
+    const [a, b] = halves.map(half => cutOf(half.subarray(plane * size, (plane + 1) * size), 1, width, height, (width - w) >> 1, (height - h) >> 1, w, h)) as [Float32Array, Float32Array]
+    return decompose(a.map((value, i) => 0.5 * factor * (value - b[i]!)), w, h, SCALES).details.map(robustSigma)
   }
 
   #star(image: StackImage, plane: number): RadialCurve | null {
@@ -149,7 +180,7 @@ export class Restorer {
     if (!halves) return null
     const w = Math.min(width, 208)
     const h = Math.min(height, 208)
-    const cut = (half: Float32Array) => middleOf(half, planes, width, height, w, h)
+    const cut = (half: Float32Array) => cutOf(half, planes, width, height, (width - w) >> 1, (height - h) >> 1, w, h)
     const [a, b] = halves.map(cut) as [Float32Array, Float32Array]
     const sharper = [await restore(a, w, h, planes, plan, pause), await restore(b, w, h, planes, plan, pause)].map(({ samples }) => stackLuminance(samples, planes, false, w, h))
     const before = halvesNoise(stackLuminance(a, planes, false, w, h), stackLuminance(b, planes, false, w, h))
@@ -163,10 +194,8 @@ const colourFactor = (plane: number): number => [0.8636, 1, 1.2153][plane]!
 /** Level of the sky about a star: the median of all samples. */
 const levelOf = (image: Float32Array): number => Float32Array.from(image).sort()[image.length >> 1]!
 
-function middleOf(samples: Float32Array, planes: number, width: number, height: number, w: number, h: number): Float32Array {
+function cutOf(samples: Float32Array, planes: number, width: number, height: number, x0: number, y0: number, w: number, h: number): Float32Array {
   const out = new Float32Array(planes * w * h)
-  const x0 = (width - w) >> 1
-  const y0 = (height - h) >> 1
   for (let p = 0; p < planes; p++) for (let y = 0; y < h; y++) out.set(samples.subarray((p * height + y0 + y) * width + x0, (p * height + y0 + y) * width + x0 + w), (p * h + y) * w)
   return out
 }

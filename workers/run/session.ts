@@ -1,4 +1,4 @@
-import type { CaptureInput, CoreApi, DriftAnswer, ExportFile, ExportKind, OpenAnswer, Optics, RunEvent, StackImage } from '../api'
+import type { CaptureInput, CoreApi, DriftAnswer, ExportFile, ExportKind, OpenAnswer, Optics, Part, RunEvent, StackImage } from '../api'
 import { CaptureError } from '../decode/types'
 import type { CaptureOverrides } from '../../shared/schemas/capture'
 import type { Evidence } from '../../shared/schemas/evidence'
@@ -72,11 +72,11 @@ export class Session implements CoreApi {
     await this.#finished
   }
 
-  async stack(count: number, restored: boolean, dragging = false): Promise<StackImage> {
+  async stack(count: number, restored: boolean, dragging = false, part: Part | null = null): Promise<StackImage> {
     // A newer request makes an unfinished older one pointless.
     this.#stacking?.abort()
     this.#stacking = new AbortController()
-    return this.#need().stack(count, restored, this.#stacking.signal, dragging)
+    return this.#need().stack(count, restored, this.#stacking.signal, dragging, part)
   }
 
   figures(count: number): Promise<StackFigures> { return this.#need().figures(count) }
