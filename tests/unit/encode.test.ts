@@ -5,7 +5,8 @@ import * as UTIF from 'utif2'
 import { checksumOf, encodeChecksum } from '../../workers/encode/checksum'
 import { framesCsv, frameTableHeader, textCell } from '../../workers/encode/csv'
 import { cubeLayout, decodeCubeFrame, encodeFits, textCards } from '../../workers/encode/fits'
-import { crc32, encodePng } from '../../workers/encode/png'
+import { crc32 } from '../../shared/crc32'
+import { encodePng } from '../../workers/encode/png'
 import { encodeTiff16 } from '../../workers/encode/tiff'
 
 describe('FITS checksum', () => {

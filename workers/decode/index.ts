@@ -16,7 +16,18 @@ const HEAD_BYTES = 512
 const known = 'SER, FITS, TIFF and PNG'
 
 /** Files beside a recording that are no frames: system files, notes, settings. */
-const foreign = (name: string) => name.startsWith('.') || /^(thumbs\.db|desktop\.ini)$/i.test(name) || /^(txt|log|json|csv|md|ini|pdf|db|xml|html?)$/.test(extensionOf(name))
+function foreign(path: string): boolean {
+  const name = path.slice(path.lastIndexOf('/') + 1)
+  return name.startsWith('.') || /^(thumbs\.db|desktop\.ini)$/i.test(name) || /^(txt|log|json|csv|md|ini|pdf|db|xml|html?)$/.test(extensionOf(name))
+}
+
+/** The files of a folder that can be frames: those with a name that a decoder goes by, where there are any. */
+function frameFiles(sources: ByteSource[]): ByteSource[] {
+  if (sources.length === 1) return sources
+  const own = sources.filter(source => !foreign(source.name))
+  const named = own.filter(source => decoders.some(decoder => decoder.extensions.includes(extensionOf(source.name))))
+  return named.length > 0 ? named : own
+}
 
 async function decoderOf(source: ByteSource, signal?: AbortSignal): Promise<Decoder | null> {
   const head = await source.read(0, Math.min(HEAD_BYTES, source.size), signal)
@@ -29,7 +40,7 @@ async function decoderOf(source: ByteSource, signal?: AbortSignal): Promise<Deco
  * @throws CaptureError with a code and a text for the user, for whatever cannot be read
  */
 export async function openCapture(name: string, sources: ByteSource[], overrides: CaptureOverrides = {}, signal?: AbortSignal): Promise<FrameReader> {
-  const candidates = sources.length === 1 ? sources : sources.filter(source => !foreign(source.name))
+  const candidates = frameFiles(sources)
   const ignored = sources.length - candidates.length
   if (candidates.length === 0) throw new CaptureError('no-frames', `There are no frames in ${name}. Lull reads ${known}: a file, or a folder of frame files.`)
   candidates.sort((a, b) => naturalCompare(a.name, b.name))
@@ -51,8 +62,14 @@ export async function openCapture(name: string, sources: ByteSource[], overrides
   }
   const extension = extensionOf(first.name)
   if (extension && !decoder.extensions.includes(extension)) reader.facts.notes.push(info('extension', `The name ends in .${extension}, but the content is ${decoder.label}; it is read as ${decoder.label}.`))
-  if (ignored > 0) reader.facts.notes.push(info('ignored', `${ignored} ${ignored === 1 ? 'file' : 'files'} in the folder are not frames and were left out.`))
+  if (ignored > 0) reader.facts.notes.push(info('ignored', `${ignored === 1 ? 'One file' : `${ignored} files`} in the folder ${ignored === 1 ? 'is no frame and was' : 'are no frames and were'} left out: ${leftOut(sources, candidates)}.`))
   return reader
+}
+
+/** Names of what was left out, the first three of them. */
+function leftOut(sources: ByteSource[], candidates: ByteSource[]): string {
+  const names = sources.filter(source => !candidates.includes(source)).map(source => source.name)
+  return names.length > 3 ? `${names.slice(0, 3).join(', ')} and ${names.length - 3} more` : names.join(', ')
 }
 
 /** A damaged file of a known name goes to its decoder, whose message says more than "unknown"; a wrong name is told. */

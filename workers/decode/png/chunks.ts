@@ -1,4 +1,5 @@
 /** The chunks of a PNG file (W3C PNG, third edition), walked with caps. */
+import { crc32 } from '../../../shared/crc32'
 import { CaptureError } from '../types'
 import { checkFrameSize } from '../limits'
 
@@ -17,7 +18,9 @@ export interface PngInfo {
 const depths: Record<number, number[]> = { 0: [1, 2, 4, 8, 16], 2: [8, 16], 3: [1, 2, 4, 8], 4: [8, 16], 6: [8, 16] }
 export const samplesPerPixel: Record<number, number> = { 0: 1, 2: 3, 3: 1, 4: 2, 6: 4 }
 
-/** Reads header, palette and image data. Chunks of other kinds are skipped; checksums are not relied on. */
+const used = new Set(['IHDR', 'PLTE', 'IDAT'])
+
+/** Reads header, palette and image data. Chunks of other kinds are skipped; those that are used must have their checksums right. */
 export function readPng(name: string, file: Uint8Array): PngInfo {
   const view = new DataView(file.buffer, file.byteOffset, file.byteLength)
   const damaged = (what: string) => new CaptureError('damaged', `${name} is a damaged PNG file: ${what}. Copy it again.`)
@@ -36,6 +39,7 @@ export function readPng(name: string, file: Uint8Array): PngInfo {
       break
     }
     const body = file.subarray(at + 8, at + 8 + length)
+    if (used.has(type) && crc32(file.subarray(at + 4, at + 8 + length)) !== view.getUint32(at + 8 + length)) throw damaged(`the checksum of its ${type} chunk is wrong`)
     if (!info && type !== 'IHDR') throw damaged('it does not begin with its header')
     if (type === 'IHDR') {
       if (length !== 13 || info) throw damaged('its header cannot be')

@@ -1,14 +1,8 @@
 /** The samples of one TIFF page: strips or tiles, packed or not, planes together or apart. */
-import { getDecoder } from 'geotiff'
 import type { ByteSource } from '../../source/types'
-import { inflateCapped } from '../inflate'
 import { CaptureError, type Samples } from '../types'
 import type { TiffPage } from './directory'
-
-/** Compressions that are read: none, LZW, Deflate (two numbers), PackBits. */
-export const readableCompressions = new Set([1, 5, 8, 32946, 32773])
-/** LZW expands 1,400 times at most; a strip larger than this could fill the memory whatever it says. */
-const MAX_PACKED_BYTES = 64 << 20
+import { unpackBlock } from './unpack'
 
 export type TiffKind = 'uint8' | 'uint16' | 'float32'
 
@@ -19,24 +13,6 @@ export function kindOf({ bits, sampleFormat }: TiffPage): TiffKind | null {
   if (bits === 8 || bits === 4 || bits === 2 || bits === 1) return 'uint8'
   if (bits === 16 || bits === 12 || bits === 10 || bits === 14) return bits === 16 ? 'uint16' : null
   return bits === 32 ? 'float32' : null
-}
-
-async function unpack(source: ByteSource, page: TiffPage, bytes: Uint8Array<ArrayBuffer>, wanted: number): Promise<Uint8Array<ArrayBuffer>> {
-  const damaged = () => new CaptureError('damaged', `A page of ${source.name} cannot be unpacked. Copy the file again.`)
-  let out: Uint8Array<ArrayBuffer> | null
-  if (page.compression === 1) out = bytes
-  else if (page.compression === 8 || page.compression === 32946) out = await inflateCapped(bytes, wanted)
-  else {
-    try {
-      const decoder = await getDecoder(page.compression, { tileWidth: page.width, tileHeight: page.height, predictor: 1, bitsPerSample: page.bits, planarConfiguration: 1 })
-      out = new Uint8Array(await decoder.decode(bytes.buffer) as ArrayBuffer)
-    }
-    catch {
-      out = null
-    }
-  }
-  if (!out || out.byteLength < wanted) throw damaged()
-  return out
 }
 
 /** Reads one sample of a block's row; `bit` counts from the row's begin. */
@@ -75,7 +51,7 @@ export async function readPixels(source: ByteSource, page: TiffPage, planes: 1 |
   const down = Math.ceil(height / blockHeight)
   const perBlock = planar ? 1 : samples
   const rowBytes = Math.ceil(blockWidth * perBlock * bits / 8)
-  const inverted = page.photometric === 0 && kind === 'uint8'
+  const inverted = page.photometric === 0 && kind !== 'float32'
   const top = 2 ** Math.min(bits, 16) - 1
   for (let set = 0; set < (planar ? planes : 1); set++) {
     for (let by = 0; by < down; by++) {
@@ -84,9 +60,10 @@ export async function readPixels(source: ByteSource, page: TiffPage, planes: 1 |
         const offset = page.offsets[index]
         const count = page.byteCounts[index] ?? rowBytes * blockHeight
         if (offset === undefined || offset + count > source.size) throw new CaptureError('truncated', `${source.name} ends within a page. Copy it again from the card.`)
-        if (page.compression !== 1 && count > MAX_PACKED_BYTES) throw new CaptureError('too-large', `A part of ${source.name} is packed in a piece of ${(count / 1e6).toFixed(0)} MB, more than Lull unpacks at once. Save it without compression.`)
         const rows = tile ? blockHeight : Math.min(blockHeight, height - by * blockHeight)
-        const bytes = await unpack(source, page, await source.read(offset, page.compression === 1 ? Math.min(count, rowBytes * rows) : count, signal), rowBytes * rows)
+        const wanted = rowBytes * rows
+        const bytes = await unpackBlock(page.compression, await source.read(offset, page.compression === 1 ? Math.min(count, wanted) : count, signal), wanted)
+        if (!bytes) throw new CaptureError('damaged', `A page of ${source.name} cannot be unpacked. The file is damaged; copy it again.`)
         const view = new DataView(bytes.buffer, bytes.byteOffset, bytes.byteLength)
         const sample = sampleReader(view, page)
         for (let y = 0; y < rows && by * blockHeight + y < height; y++) {

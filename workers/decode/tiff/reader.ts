@@ -5,7 +5,8 @@ import { captureFacts, info, trouble } from '../facts'
 import { checkFrameSize } from '../limits'
 import { CaptureError, type FrameReader, type Samples } from '../types'
 import { pageOffsets, readPage, tiffLayout, type TiffPage } from './directory'
-import { kindOf, readableCompressions, readPixels } from './pixels'
+import { kindOf, readPixels } from './pixels'
+import { readableCompressions } from './unpack'
 
 const compressionNames: Record<number, string> = { 2: 'CCITT', 3: 'fax', 4: 'fax', 6: 'JPEG', 7: 'JPEG', 34712: 'JPEG 2000', 34887: 'LERC', 50000: 'Zstandard', 50001: 'WebP', 34925: 'LZMA' }
 
@@ -19,6 +20,7 @@ function checkPage(name: string, page: TiffPage): void {
   if (!kindOf(page)) throw new CaptureError('unsupported-depth', `${name} has ${page.bits} bits a sample (${page.sampleFormat === 3 ? 'floating point' : 'integers'}); Lull reads 1, 2, 4, 8, 16 and 32 bits, and 32 or 64 bits of floating point. Save it as 16 bits.`)
   if (page.photometric === 3 || page.photometric > 3) throw new CaptureError('unsupported-depth', `${name} has ${page.photometric === 3 ? 'a palette' : `colours of a kind (${page.photometric})`} that Lull does not read. Save it as grey or RGB.`)
   if (page.tile && (page.tile.width < 1 || page.tile.height < 1 || page.tile.width > 65_536 || page.tile.height > 65_536)) throw new CaptureError('damaged', `${name} is a damaged TIFF file: its tiles cannot be. Copy it again.`)
+  if (page.samples < 1 || page.samples > 64) throw new CaptureError('damaged', `${name} is a damaged TIFF file: it says that it has ${page.samples} samples a pixel. Copy it again.`)
   if (page.rowsPerStrip < 1) throw new CaptureError('damaged', `${name} is a damaged TIFF file: its strips cannot be. Copy it again.`)
 }
 
