@@ -7,7 +7,7 @@
  * default recipe, and every line says what it is compared with and where that figure comes from.
  */
 import { judgeCapture } from './accuracy/judge'
-import { blankRow, rehearsalTruths } from './accuracy/rehearsals'
+import { blankRows, rehearsalTruths } from './accuracy/rehearsals'
 import { printRows, type Row } from './accuracy/rows'
 import { sampleTruths } from './accuracy/truth'
 
@@ -23,5 +23,5 @@ for await (const known of dir ? sampleTruths(dir) : rehearsalTruths()) {
     rows.push({ capture: known.name, what: 'could not be judged', value: NaN, digits: 0, reference: null, source: error instanceof Error ? error.message : String(error), want: 'none' })
   }
 }
-if (only.length === 0) rows.push(await blankRow())
+if (only.length === 0) rows.push(...await blankRows())
 printRows(rows)

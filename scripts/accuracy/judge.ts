@@ -5,6 +5,7 @@ import { prepareColour } from '../../workers/prepare/frame'
 import { Engine } from '../../workers/run/engine'
 import { stackFigures } from '../../workers/score/figures'
 import { nodePool } from '../lib/node-pool'
+import { componentRows } from './components'
 import { median, rankCorrelation, rms, type Row } from './rows'
 import { sceneErrors } from './scene-error'
 import type { KnownCapture } from './truth'
@@ -97,6 +98,7 @@ export async function judgeCapture(known: KnownCapture): Promise<Row[]> {
         row('', '  rim at a disc\'s limb, dark, % of the step', 100 * (report.overshoot.rimDark ?? NaN), 1, 'none')
       }
     }
+    rows.push(...await componentRows(engine, known))
     return rows
   }
   finally {

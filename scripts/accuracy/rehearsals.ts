@@ -4,6 +4,8 @@ import { defaultRecipe } from '../../shared/schemas/recipe'
 import { demoScene, rehearsalReader, type RehearsalSpec } from '../../workers/rehearse/index'
 import { Engine } from '../../workers/run/engine'
 import { rehearsalGeometry } from '../../workers/rehearse/geometry'
+import { skyToPixels } from '../../workers/rehearse/scene'
+import { pixelScaleArcsec } from '../../workers/rehearse/spec'
 import { nodePool } from '../lib/node-pool'
 import type { Row } from './rows'
 import type { KnownCapture } from './truth'
@@ -59,6 +61,7 @@ export async function* rehearsalTruths(): AsyncGenerator<KnownCapture> {
       scene,
       open: () => Promise.resolve(reader),
       strehl: truths.map(t => t.strehl),
+      stars: spec.scene.kind === 'stars' ? spec.scene.stars.map(star => ({ ...skyToPixels(star.separationArcsec, star.positionAngleDeg, spec.upDeg, pixelScaleArcsec(spec.optics)), deltaMag: star.deltaMag })) : null,
       peakX: truths.map(t => t.placeX + t.psfPeakX),
       peakY: truths.map(t => t.placeY + t.psfPeakY),
       tiltX: null,
@@ -73,7 +76,7 @@ export async function* rehearsalTruths(): AsyncGenerator<KnownCapture> {
 }
 
 /** A capture of nothing: it must be called that, and whatever is stacked must not draw the reference. */
-export async function blankRow(): Promise<Row> {
+export async function blankRows(): Promise<Row[]> {
   const spec: RehearsalSpec = { ...demoScene('double'), name: 'nothing but noise', scene: { kind: 'blank' }, frames: 400 }
   const reader = await rehearsalReader(spec)
   const pool = nodePool(1)
@@ -81,10 +84,15 @@ export async function blankRow(): Promise<Row> {
   try {
     const { surveyed, ranking } = await engine.run(defaultRecipe, null, () => undefined, new AbortController().signal)
     const stack: StackImage | null = ranking.order.length > 0 ? await engine.stack(ranking.order.length, false) : null
-    return {
+    const { signal, confirmed, drawn } = await engine.evidence()
+    const source = 'alignment on noise draws its template (Henderson 2013, PNAS 110, 18037)'
+    return [{
       capture: 'noise only', what: `told as "no signal" (1 is yes); ${ranking.order.length} of ${spec.frames} frames were left to stack${stack ? `, stack of ${stack.count}` : ''}`,
-      value: surveyed.survey.noSignal ? 1 : 0, digits: 0, reference: 1, want: 'higher', source: 'alignment on noise draws its template (Henderson 2013, PNAS 110, 18037)',
-    }
+      value: surveyed.survey.noSignal && !signal ? 1 : 0, digits: 0, reference: 1, want: 'higher', source,
+    }, {
+      capture: 'noise only', what: `stack-template correlation as shown (with the pixels that were aligned: ${drawn?.toFixed(2) ?? '–'})`,
+      value: confirmed ?? NaN, digits: 2, reference: 0.1, want: 'lower', source,
+    }]
   }
   finally {
     pool.end()

@@ -2,6 +2,7 @@
 import { readFile, readdir } from 'node:fs/promises'
 import path from 'node:path'
 import type { Optics } from '../../workers/api'
+import { skyToPixels } from '../../workers/rehearse/scene'
 import { openCapture } from '../../workers/decode/index'
 import type { FrameReader } from '../../workers/decode/types'
 import { captureSources } from '../lib/file-source'
@@ -14,6 +15,8 @@ export interface KnownCapture {
   scene: 'stars' | 'planet' | 'terrain'
   open(): Promise<FrameReader>
   strehl: number[]
+  /** Offsets of the stars from the first one, px, and magnitudes fainter; null for extended scenes. */
+  stars: { dx: number, dy: number, deltaMag: number }[] | null
   /** Place of the first star, or of the scene's middle, by the brightest point of the point-spread function, px. */
   peakX: number[]
   peakY: number[]
@@ -38,6 +41,8 @@ interface TruthFile {
   frames: number
   origin_xy: [number, number]
   colours?: number[]
+  stars?: { sep_arcsec: number, pa_deg: number, dmag: number }[]
+  up_pa_deg?: number
   per_frame: Record<'strehl' | 'drift_x' | 'drift_y' | 'psf_peak_x' | 'psf_peak_y', number[]> & { ztilt_x?: number[], ztilt_y?: number[] }
 }
 
@@ -71,6 +76,7 @@ export async function* sampleTruths(dir: string): AsyncGenerator<KnownCapture> {
         return openCapture(capture, sources)
       },
       strehl: p.strehl,
+      stars: truth.stars ? truth.stars.map(({ sep_arcsec, pa_deg, dmag }) => ({ ...skyToPixels(sep_arcsec, pa_deg, truth.up_pa_deg ?? 0, truth.scale), deltaMag: dmag })) : null,
       peakX: add(p.drift_x, p.psf_peak_x, ox)!,
       peakY: add(p.drift_y, p.psf_peak_y, oy)!,
       tiltX: add(p.drift_x, p.ztilt_x, ox),
