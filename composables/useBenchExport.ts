@@ -36,12 +36,13 @@ export function useBenchExport() {
     const figures = await core.figures(bench.count)
     const restoration = await core.restorePlan(bench.count)
     const evidence = await core.evidence()
+    const starTransfer = await core.starTransfer(bench.count)
     const proofs = proofFractions.map(fraction => bench.proofs.find(proof => proof.fraction === fraction)?.figures)
     if (proofs.some(proof => !proof)) throw new Error('The proofs are not all there yet.')
     return JSON.parse(JSON.stringify({
       facts, recipe: bench.recipe, recipeHash: await recipeHash(toRaw(bench.recipe)), kind, chosen,
       keep: { fraction: bench.recipe.keep.fraction, count: bench.count }, ranked: bench.ranked, setAside: bench.setAside,
-      figures, proofs, average: average.figures, ladder, stretch: bench.stretch, restoration, evidence, provenance,
+      figures, proofs, average: average.figures, ladder, stretch: bench.stretch, restoration, evidence, starTransfer, provenance,
     })) as RunResult
   }
 

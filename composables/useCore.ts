@@ -130,6 +130,10 @@ export function useCore(): CoreHandle {
       const { api, call } = bound(live())
       return await call(api.restorePlan(count) as Promise<RestorePlan>)
     },
+    async starTransfer(count: number) {
+      const { api, call } = bound(live())
+      return await call(api.starTransfer(count) as Promise<{ step: number, values: number[] } | null>)
+    },
     async evidence() {
       const { api, call } = bound(live())
       return await call(api.evidence() as Promise<Evidence>)

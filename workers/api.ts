@@ -122,6 +122,8 @@ export interface CoreApi {
   figures(count: number): Promise<StackFigures>
   /** What the recipe's restoration comes to for the best `count` frames; filed with a run. */
   restorePlan(count: number): Promise<RestorePlan>
+  /** How the air blurs the star on the bench: its transfer over the telescope's own; null where it cannot be measured. */
+  starTransfer(count: number): Promise<{ step: number, values: number[] } | null>
   /** The keep curve of the last run, from independent halves; computed when first asked for. */
   evidence(): Promise<Evidence>
   /** One decoded frame (luminance as judged), for looking at a single exposure. */

@@ -39,6 +39,7 @@ expose({
   stack: async (count, restored, dragging, part) => handOver(await session.stack(count, restored, dragging, part)),
   figures: count => session.figures(count),
   evidence: () => session.evidence(),
+  starTransfer: count => session.starTransfer(count),
   restorePlan: count => session.restorePlan(count),
   frame: async index => handOver(await session.frame(index)),
   export: async (kinds, context) => {

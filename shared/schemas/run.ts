@@ -83,6 +83,8 @@ export const runResultSchema = z.object({
   stretch: displayStretchSchema,
   /** What the recipe's restoration came to for the filed stack; absent in runs of older versions. */
   restoration: restorePlanSchema.optional(),
+  /** Runs of stars: transfer of the star's stack over the telescope's own at 0, step … cycles per px, as a reference for other captures. */
+  starTransfer: z.object({ step: z.number().positive(), values: z.array(z.number()).min(2).max(512) }).nullable().optional(),
   /** The keep curve and what confirms it; absent in runs of older versions. */
   evidence: evidenceSchema.optional(),
   provenance: provenanceSchema,

@@ -137,6 +137,12 @@ export class Engine {
     return restorer.plan(count, recipe.restore, pauseFor())
   }
 
+  /** A star's transfer over the telescope's own, in the best `count` frames; null for other targets. */
+  async starTransfer(count: number): Promise<{ step: number, values: number[] } | null> {
+    const curve = await this.#need().restorer.star(count, pauseFor())
+    return curve && { step: curve.step, values: [...curve.values] }
+  }
+
   /** Evidence for the keep fraction of the last run; computed once. */
   evidence(): Promise<Evidence> {
     const state = this.#need()

@@ -96,6 +96,13 @@ export class Restorer {
     return halves && this.#spectra(halves, this.#in.ladder.planes === 3 ? 1 : 0)
   }
 
+  /** The transfer of a star over the telescope's own (of the green plane); null for other targets. */
+  async star(count: number, pause: Pause): Promise<RadialCurve | null> {
+    if (this.#measured?.count !== count) this.#measured = { count, value: await this.#measure(count, pause) }
+    const { planes } = this.#measured.value
+    return planes[Math.min(1, planes.length - 1)]!.star
+  }
+
   /** What the air does to an extended target, as measured; null where it cannot be told. */
   air(pause: Pause): Promise<Blur | null> { return this.#blur(pause) }
 

@@ -23,6 +23,6 @@ export async function runResult(engine: Engine, recipe: Recipe, recipeHash: stri
     ranked: stacker.ranked, setAside: countSetAside(refined.shifts.setAside),
     figures: figurer.of(image), proofs, average: known.get('average') ?? figurer.ofAverage(engine.averageShown(), graded.table.count),
     ladder: { counts, width, height, planes },
-    stretch: displayRange(image), restoration, evidence: await engine.evidence(), provenance: engine.provenance(),
+    stretch: displayRange(image), restoration, evidence: await engine.evidence(), starTransfer: await engine.starTransfer(count), provenance: engine.provenance(),
   }
 }

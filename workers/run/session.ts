@@ -81,6 +81,7 @@ export class Session implements CoreApi {
 
   figures(count: number): Promise<StackFigures> { return this.#need().figures(count) }
   restorePlan(count: number): Promise<RestorePlan> { return this.#need().restorePlan(count) }
+  starTransfer(count: number): Promise<{ step: number, values: number[] } | null> { return this.#need().starTransfer(count) }
   evidence(): Promise<Evidence> { return this.#need().evidence() }
   frame(index: number): Promise<StackImage> { return this.#need().frame(index) }
   export(kinds: ExportKind[], context: ExportContext): Promise<ExportFile[]> { return exportFiles(this.#need(), kinds, context) }
