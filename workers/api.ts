@@ -9,7 +9,7 @@ import type { Evidence } from '../shared/schemas/evidence'
 import type { Recipe, ScoreMeasure } from '../shared/schemas/recipe'
 import type { RestoreMethod, RestorePlan } from '../shared/schemas/restoration'
 import type { MeasureRequest, MeasureResult } from '../shared/schemas/measure'
-import type { DisplayStretch, LadderInfo, Provenance, RunResult, SetAsideReason, StackFigures } from '../shared/schemas/run'
+import type { ColourShifts, DisplayStretch, LadderInfo, Provenance, RunResult, SetAsideReason, StackFigures } from '../shared/schemas/run'
 
 /** A capture to open: files picked by the user (one file, or the files of a folder in any order), or a demo. */
 export type CaptureInput =
@@ -72,6 +72,8 @@ export interface StackImage {
   /** Frames in it. */
   count: number
   restored: boolean
+  /** Colour stacks: what was added to the places of red and blue to lay them on green, px; null where a plane was left alone. */
+  colours?: ColourShifts
   /** Where the recipe restores: what was done, and the figures of the guards. */
   restoration?: RestorationReport
 }

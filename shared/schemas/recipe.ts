@@ -36,6 +36,8 @@ export const recipeSchema = z.object({
     referenceFraction: z.number().min(0.001).max(1),
     /** How often the reference is remade from registered frames. */
     refineRounds: z.number().int().min(0).max(3),
+    /** Lay the red and blue planes of colour stacks on the green one; without effect on grey captures. */
+    alignColours: z.boolean(),
   }).strict(),
   keep: z.object({
     /** Keep fraction, 0.001-1, in steps of 0.001. */
@@ -95,7 +97,7 @@ export const defaultRecipe: Recipe = {
   version: RECIPE_VERSION,
   prepare: { repairHotPixels: true },
   score: { rankBy: null, blurPx: null },
-  register: { method: 'correlation', windowPx: null, centre: null, referenceFraction: 0.05, refineRounds: 2 },
+  register: { method: 'correlation', windowPx: null, centre: null, referenceFraction: 0.05, refineRounds: 2, alignColours: true },
   keep: { fraction: 0.1 },
   combine: { method: 'mean', kernel: 'cubic' },
   restore: {

@@ -55,6 +55,11 @@ export const displayStretchSchema = z.object({
   gamma: z.number().min(0.1).max(10),
 })
 
+/** Added to the places of a colour plane to land on green, px. */
+const planeShiftSchema = z.object({ dx: z.number(), dy: z.number() })
+/** null where a plane shares too little detail with green to be registered on it. */
+export const colourShiftsSchema = z.object({ red: planeShiftSchema.nullable(), blue: planeShiftSchema.nullable() })
+
 export const provenanceSchema = z.object({
   lullVersion: z.string(),
   /** Which arithmetic path computed it: "plain" or "simd". */
@@ -80,6 +85,8 @@ export const runResultSchema = z.object({
   proofs: z.array(stackFiguresSchema),
   average: stackFiguresSchema,
   ladder: ladderInfoSchema,
+  /** How the colour planes lay; absent for grey stacks, and where the recipe leaves the colours as they are. */
+  colours: colourShiftsSchema.optional(),
   stretch: displayStretchSchema,
   /** What the recipe's restoration came to for the filed stack; absent in runs of older versions. */
   restoration: restorePlanSchema.optional(),
@@ -91,6 +98,7 @@ export const runResultSchema = z.object({
 })
 
 export type StackFigures = z.infer<typeof stackFiguresSchema>
+export type ColourShifts = z.infer<typeof colourShiftsSchema>
 export type LadderInfo = z.infer<typeof ladderInfoSchema>
 export type DisplayStretch = z.infer<typeof displayStretchSchema>
 export type Provenance = z.infer<typeof provenanceSchema>

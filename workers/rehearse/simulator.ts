@@ -1,7 +1,8 @@
 /** Makes the frames of a rehearsal and their truth, in any order. */
 import type { Samples } from '../decode/types'
 import type { FrameTruth, RehearsalSpec } from './spec'
-import { rehearsalSpecSchema } from './spec'
+import { pixelScaleArcsec, rehearsalSpecSchema } from './spec'
+import { dispersionArcsec } from '../../shared/astro/dispersion'
 import { createAir } from './air'
 import { createCourse } from './motion'
 import { createDetector, mosaicPlanes } from './detector'
@@ -39,7 +40,11 @@ export function createSimulator(given: RehearsalSpec): Simulator {
   const colours = wavelengths.map((wavelength) => {
     const ratio = optics.wavelengthNm / wavelength
     const pupil = createPupil(psfSize, diameter * ratio, optics.obstruction, ratio === 1 ? 1 : 1 / ratio)
+    // Blue stands higher than green, and red lower.
+    const raised = spec.dispersion ? dispersionArcsec(wavelength, MOSAIC_WAVELENGTHS[1], spec.dispersion.altitudeDeg) / pixelScaleArcsec(optics) * oversample : 0
+    const zenith = (spec.dispersion?.zenithDeg ?? 0) * Math.PI / 180
     return {
+      raisedX: raised * Math.cos(zenith), raisedY: raised * Math.sin(zenith),
       ratio, pupil, maker: createPsfMaker(pupil, psfTransform), phase: new Float64Array(pupil.x.length),
       /** Cut-off frequency D/λ in cycles per canvas, and one for the grey edge. */
       band: Math.min(canvasSize / 2, Math.ceil(canvasSize * ratio / lambdaOverDPx) + 2),
@@ -63,12 +68,12 @@ export function createSimulator(given: RehearsalSpec): Simulator {
     const slopeX = 2 * Math.PI * (fineX - shiftX) / psfSize
     const slopeY = 2 * Math.PI * (fineY - shiftY) / psfSize
     const start = course.seconds[frame]!
-    const psfs = colours.map(({ ratio, pupil, maker, phase }) => {
+    const psfs = colours.map(({ ratio, pupil, maker, phase, raisedX, raisedY }) => {
       const psf = new Float64Array(psfSize * psfSize)
       const gain = 1 / (spec.subSteps * pupil.power * psfSize * psfSize)
       for (let step = 0; step < spec.subSteps; step++) {
         air.phase(start + spec.exposureMs / 1000 * (step + 0.5) / spec.subSteps, pupil, ratio, phase)
-        for (let i = 0; i < phase.length; i++) phase[i]! += pupil.x[i]! * slopeX + pupil.y[i]! * slopeY
+        for (let i = 0; i < phase.length; i++) phase[i]! += pupil.x[i]! * (slopeX + 2 * Math.PI * raisedX / psfSize) + pupil.y[i]! * (slopeY + 2 * Math.PI * raisedY / psfSize)
         maker.add(phase, gain, psf)
       }
       return psf

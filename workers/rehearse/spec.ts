@@ -4,8 +4,8 @@
  *
  * Modelled: Kolmogorov or von Kármán phase in frozen flow of up to four layers, slow changes of its strength, finite
  * exposure, circular pupil with central obstruction, pixel integration, drift, shake, jumps, cloud, dropped frames,
- * photon and read noise, bias, hot pixels, colour-filter mosaics, clipping and quantisation.
- * Not modelled: differences of the air across the field, scintillation, dispersion.
+ * photon and read noise, bias, hot pixels, dispersion between colours, colour-filter mosaics, clipping and quantisation.
+ * Not modelled: differences of the air across the field, scintillation.
  */
 import { z } from 'zod'
 import { plateScale } from '../../shared/optics'
@@ -79,6 +79,11 @@ export const rehearsalSpecSchema = z.object({
     shakePx: z.number().min(0).max(100),
     jumps: z.array(z.object({ frame: z.number().int().min(0), dx: finite, dy: finite }).strict()).max(100),
   }).strict(),
+  /**
+   * Colours drawn apart by the air (mosaics only): altitude of the target, and where the zenith lies in the frame, degrees from x
+   * toward y. Absent: none.
+   */
+  dispersion: z.object({ altitudeDeg: z.number().min(5).max(90), zenithDeg: finite }).strict().optional(),
   /** A passing cloud: depth 0-1 of the light lost at its middle; null is a clear sky. */
   cloud: z.object({ atS: finite, widthS: z.number().positive(), depth: z.number().min(0).max(1) }).strict().nullable(),
   /** Share of frames that the computer failed to write; their times are missing. */

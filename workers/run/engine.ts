@@ -26,6 +26,7 @@ import { breathe, type Pool } from './pool'
 import { growingPreview, shownAverage, singleFrame } from './preview'
 import { ProgressMeter } from './progress'
 import { proofs, repeatProofs, type Proof } from './proofs'
+import { layColours } from './colour-pass'
 import { countSetAside, rankFrames, type Ranking } from './rank'
 import { Restorer } from './restorer'
 import { firstReference, refinePass, type Refined, type RefineProgress } from './refine-pass'
@@ -109,8 +110,9 @@ export class Engine {
     const ladder = await this.#stage('ladder', keys.ladder, () => ladderPass(context, surveyed, refined.shifts, ranking, recipe.combine.kernel, {
       keeper: this.#stages.keeps ? new LadderKeeper(this.#stages, keys.ladder) : null, checkpointMs: 2 * this.#checkpointMs,
     }))
-    const same = this.#state?.ladder === ladder ? this.#state : null
+    const same = this.#state?.ladder === ladder && this.#state.recipe.register.alignColours === recipe.register.alignColours ? this.#state : null
     const stacker = same?.stacker ?? new Stacker(ladder, ranking.order, refined.shifts, this.frames, surveyed.plan)
+    if (!same && recipe.register.alignColours) await layColours(stacker, ladder, surveyed, refined.reference)
     const unchanged = same !== null && canonicalJson(same.optics) === canonicalJson(optics)
     const figurer = unchanged ? same.figurer : new Figurer({ stacker, ladder, order: ranking.order, peak: graded.table.peak, surveyed, optics })
     const restorer = unchanged ? same.restorer : new Restorer({ stacker, ladder, surveyed, optics, shifts: refined.shifts })

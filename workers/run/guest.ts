@@ -48,7 +48,7 @@ export class GuestRun implements GuestApi {
     const { width, height, planes } = result.ladder
     const shown = this.#counts[nearestRung(this.#counts, count)]!
     const samples = await this.#plane(shown)
-    const image: StackImage = { width, height, planes, samples: samples.slice(), count: shown, restored: false }
+    const image: StackImage = { width, height, planes, samples: samples.slice(), count: shown, restored: false, ...(result.colours ? { colours: result.colours } : {}) }
     if (!restored) return image
     const plan = result.restoration ?? planByHand(result.recipe.restore, result.kind, image.samples, width, height, planes)
     if (plan.method === 'nothing') return { ...image, restoration: reportOf(plan, null, null, 0) }

@@ -1,4 +1,6 @@
 import type { StackImage } from '../api'
+import { alignColours } from '../register/colours'
+import type { ColourShifts } from '../../shared/schemas/run'
 import type { PreparePlan } from '../prepare/types'
 import { coveredBy, FIXED_FRAMES } from '../stack/accumulate'
 import { coverageCounts, coverageMarks, markCovered } from '../stack/coverage'
@@ -22,6 +24,7 @@ export class Stacker {
   readonly #adder: Adder
   readonly #sum: Float64Array
   readonly #small: Int32Array
+  #colours: ColourShifts | null = null
   #count = 0
   #queue: Promise<unknown> = Promise.resolve()
 
@@ -35,6 +38,10 @@ export class Stacker {
     this.#sum = new Float64Array(size)
     this.#small = this.#adder.kernels.ints(size)
   }
+
+  /** How the colour planes of every stack from now on are laid on green; null leaves them as they are. */
+  set colours(shifts: ColourShifts | null) { this.#colours = shifts }
+  get colours(): ColourShifts | null { return this.#colours }
 
   /** Frames that can be stacked. */
   get ranked(): number { return this.#order.length }
@@ -101,7 +108,7 @@ export class Stacker {
     const covered = coverageCounts(marks, width, height)
     const samples = meanOf(sum, covered, scale, planes)
     fillUncovered(samples, covered, width, height, planes)
-    return { width, height, planes, samples, count: frames.length, restored: false }
+    return this.#aligned({ width, height, planes, samples, count: frames.length, restored: false })
   }
 
   async #moveTo(wanted: number, signal?: AbortSignal): Promise<void> {
@@ -144,7 +151,13 @@ export class Stacker {
     const covered = this.coverage(count)
     const samples = meanOf(this.#sum, covered, scale, planes)
     fillUncovered(samples, covered, width, height, planes)
-    return { width, height, planes, samples, count, restored: false }
+    return this.#aligned({ width, height, planes, samples, count, restored: false })
+  }
+
+  #aligned(image: StackImage): StackImage {
+    if (!this.#colours || image.planes !== 3) return image
+    alignColours(image.samples, image.width, image.height, this.#colours)
+    return { ...image, colours: this.#colours }
   }
 
   /** How many of the best `count` frames cover each pixel; `every` second one from the first for a half. */

@@ -13,7 +13,7 @@ import { createScorer, emptyScore } from './scorer'
 import { findSignal } from './signal'
 import type { FrameScore, Survey, TargetForm } from './types'
 
-const CHOOSE = { score: { rankBy: 'peak' as const, blurPx: null }, register: { method: 'correlation' as const, windowPx: null, centre: null, referenceFraction: 0.05, refineRounds: 2 } }
+const CHOOSE = { score: { rankBy: 'peak' as const, blurPx: null }, register: { method: 'correlation' as const, windowPx: null, centre: null, referenceFraction: 0.05, refineRounds: 2, alignColours: false } }
 
 /**
  * @param frames luminance of 16-64 frames spread over the capture, width × height each

@@ -19,6 +19,9 @@ export function registerClause({ register }: Recipe, chosen: Chosen): Piece[] {
     percent('register.referenceFraction', 'Reference fraction', register.referenceFraction),
     text(', '),
     choice('register.refineRounds', 'Refinement', register.refineRounds, roundLabels.map((label, value) => ({ value, label }))),
+    text(', and '),
+    choice('register.alignColours', 'Colours', register.alignColours, [
+      { value: true, label: 'lay the colours on each other' }, { value: false, label: 'leave the colours as they are' }]),
     text('. '),
   ]
 }
