@@ -42,7 +42,7 @@ export function useBenchExport() {
     return JSON.parse(JSON.stringify({
       facts, recipe: bench.recipe, recipeHash: await recipeHash(toRaw(bench.recipe)), kind, chosen,
       keep: { fraction: bench.recipe.keep.fraction, count: bench.count }, ranked: bench.ranked, setAside: bench.setAside,
-      figures, proofs, average: average.figures, ladder, stretch: bench.stretch, restoration, evidence, starTransfer, provenance,
+      figures, proofs, average: average.figures, ladder, stretch: bench.stretch, restoration, evidence, starTransfer, provenance, measure: bench.runMeasure,
     })) as RunResult
   }
 

@@ -6,6 +6,7 @@ import type { Knex } from 'knex'
 import * as club from './0001_club'
 import * as archive from './0002_archive'
 import * as review from './0003_review'
+import * as calibrations from './0004_calibrations'
 
 export interface Migration { up(knex: Knex): Promise<void>, down(knex: Knex): Promise<void> }
 
@@ -13,6 +14,7 @@ const migrations: { name: string, migration: Migration }[] = [
   { name: '0001_club', migration: club },
   { name: '0002_archive', migration: archive },
   { name: '0003_review', migration: review },
+  { name: '0004_calibrations', migration: calibrations },
 ]
 
 export const migrationSource: Knex.MigrationSource<typeof migrations[number]> = {

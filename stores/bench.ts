@@ -6,6 +6,8 @@ import { defineStore } from 'pinia'
 import type { CaptureInput, FrameColumns, Optics, Part, PassProgress, RunEvent, StackImage } from '~~/workers/api'
 import type { Evidence } from '~~/shared/schemas/evidence'
 import type { CaptureFacts, CaptureOverrides, TargetKind } from '~~/shared/schemas/capture'
+import type { UsedCalibration } from '~~/shared/schemas/calibration'
+import type { MeasureRequest, MeasureResult, RunMeasure } from '~~/shared/schemas/measure'
 import { readRecipe } from '~~/shared/recipe/migrate'
 import { withRecipeValue } from '~~/shared/recipe/sentences'
 import { defaultRecipe, restoringMethod, type Recipe } from '~~/shared/schemas/recipe'
@@ -62,6 +64,14 @@ export const useBenchStore = defineStore('bench', () => {
   /** The part of the picture on the screen, whole px. */
   const visible = shallowRef<Part | null>(null)
 
+  /** The last measure, and the recipe that it belongs to: another recipe makes another stack. */
+  const measured = shallowRef<MeasureResult | null>(null)
+  const measuredFor = ref('')
+  const measuredAt = ref<string | null>(null)
+  const measuring = ref(false)
+  const measureProblem = ref<string | null>(null)
+  const calibration = shallowRef<UsedCalibration | null>(null)
+
   const count = computed(() => keepCount(recipe.value.keep.fraction, ranked.value))
   const optics = computed<Optics | null>(() => {
     const f = facts.value
@@ -78,6 +88,7 @@ export const useBenchStore = defineStore('bench', () => {
     progress.value = null; columns.value = null; kind.value = null; chosen.value = null; noSignal.value = false; ranked.value = 0
     setAside.value = {}; ladder.value = null; proofs.value = []; average.value = null; provenance.value = null; evidence.value = null
     image.value = null; figures.value = null; stretchIsAuto.value = true
+    measured.value = null; measureProblem.value = null
   }
 
   /** Opens a capture; a bad one leaves its message and a bench that can open the next. */
@@ -290,6 +301,33 @@ export const useBenchStore = defineStore('bench', () => {
     void apply(next)
   }
 
+  /** What a measure depends on: everything but the restoration, which it never uses. */
+  const measureKey = () => JSON.stringify({ ...recipe.value, restore: 0 })
+  /** Measures the stars on the stack of the kept frames. A change of the recipe makes the measure void. */
+  async function measureNow(request: Omit<MeasureRequest, 'fraction'>) {
+    if (!core || measuring.value) return
+    measuring.value = true
+    measureProblem.value = null
+    const key = measureKey()
+    try {
+      const result = await core.measure({ ...request, fraction: recipe.value.keep.fraction })
+      if (key !== measureKey()) return
+      measured.value = result
+      measuredFor.value = key
+      measuredAt.value = new Date().toISOString()
+    }
+    catch (error) {
+      if ((error as Error).name !== 'AbortError' && !(error instanceof CoreStopped)) measureProblem.value = (error as Error).message
+    }
+    finally {
+      measuring.value = false
+    }
+  }
+  watch(recipe, () => { if (measured.value && measureKey() !== measuredFor.value) measured.value = null })
+  const setCalibration = (next: UsedCalibration | null) => { calibration.value = next }
+  /** The measure to be filed with the run; null where there is none of this recipe. */
+  const runMeasure = computed<RunMeasure | null>(() => (measured.value?.kind === 'measured' && measuredAt.value ? { measure: measured.value, calibration: calibration.value, measuredAt: measuredAt.value } : null))
+
   let dragStart: Recipe | null = null
   /** Sets the keep fraction; `live` while a hand is on the slider. */
   function keep(fraction: number, live: boolean) {
@@ -359,6 +397,7 @@ export const useBenchStore = defineStore('bench', () => {
 
   return {
     phase, input, facts, overrides, extra, problem, resumed, recipe, saved, past, future, progress, columns, kind, chosen, noSignal, ranked, setAside, ladder, proofs, average, provenance, evidence,
+    measured, measuring, measureProblem, runMeasure, measureNow, setCalibration,
     image, figures, stretch, stretchIsAuto, showRestored, dragging, visible, count, optics, scale, restores, changed, busy,
     open, correct, run, change, edit, undo, redo, keep, endDrag, setStretch, applySaved, cancel, close, remember, exporter,
   }

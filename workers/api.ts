@@ -139,6 +139,7 @@ export interface CoreApi {
   close(): Promise<void>
 }
 
+export type { DriftCalibration }
 export type DriftAnswer = { ok: true, drift: DriftCalibration } | { ok: false, message: string }
 
 /** A filed run to look at without its capture: the ladder file by HTTP ranges and the frame table. */

@@ -37,6 +37,7 @@ export const thingRules = {
   'run.judge': (who, thing) => sameClub(who, thing) && isMentor(who) && !owns(who, thing),
   'recipe.write': owns,
   'instrument.write': owns,
+  'calibration.write': owns,
 } satisfies Record<string, (who: Who, thing: OwnedThing) => boolean>
 
 export type ClubAction = keyof typeof clubRules

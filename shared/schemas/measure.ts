@@ -3,6 +3,7 @@
  * through left, degrees; that is the position angle where north is up and east is left. Errors are standard errors.
  */
 import { z } from 'zod'
+import { usedCalibrationSchema } from './calibration'
 
 const angleSchema = z.number().min(0).lt(360)
 const errorSchema = z.number().nonnegative()
@@ -71,3 +72,7 @@ export interface MeasureRequest {
   /** Places to begin with, px on the stack; without them the stars are found blind. */
   hints?: { x: number, y: number }[]
 }
+
+/** A measure as it is filed with a run: the values, what they were turned into arcseconds with, and when. */
+export const runMeasureSchema = z.object({ measure: pairMeasureSchema, calibration: usedCalibrationSchema.nullable(), measuredAt: z.string() })
+export type RunMeasure = z.infer<typeof runMeasureSchema>

@@ -2,6 +2,7 @@
 import { z } from 'zod'
 import { captureFactsSchema, targetKindSchema } from './capture'
 import { evidenceSchema } from './evidence'
+import { runMeasureSchema } from './measure'
 import { recipeSchema, scoreMeasures } from './recipe'
 import { restorePlanSchema } from './restoration'
 
@@ -95,6 +96,8 @@ export const runResultSchema = z.object({
   /** The keep curve and what confirms it; absent in runs of older versions. */
   evidence: evidenceSchema.optional(),
   provenance: provenanceSchema,
+  /** Of a double or multiple star, where its observer measured it before filing. */
+  measure: runMeasureSchema.nullish(),
 })
 
 export type StackFigures = z.infer<typeof stackFiguresSchema>

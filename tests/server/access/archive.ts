@@ -129,6 +129,16 @@ const shareRows: AccessRow[] = [
   { method: 'POST', route: '/api/share/:token/remarks', ask: shared(() => '/remarks', { text: 'Fine', guestName: 'A guest' }, over), expect: anyone(404) },
 ]
 
+const calibration = {
+  name: 'Drift in March',
+  data: { method: 'drift', scaleArcsecPerPx: 0.25, scaleErr: 0.001, northAngleDeg: 12, angleErr: 0.2, parity: 'normal', equinox: 'date', capture: 'drift.ser', takenAt: null, declinationDeg: 30, frames: 200, lengthPx: 400 },
+}
+async function makeCalibration({ db, people, clubId }: World): Promise<string> {
+  const id = newId()
+  await db('calibrations').insert({ id, club_id: clubId, owner_id: people.member.id, name: calibration.name, data: JSON.stringify(calibration.data), created_at: new Date() })
+  return id
+}
+
 const ofInstrument = (body?: unknown) => async (world: World) => ({ path: `/api/instruments/${await makeInstrument(world)}`, ...(body === undefined ? {} : { body }) })
 const ofRecipe = (isShared: boolean, tail: string, body?: unknown) => async (world: World) => ({ path: `/api/recipes/${await makeRecipe(world, isShared)}${tail}`, ...(body === undefined ? {} : { body }) })
 const recipe = { name: 'Mine', recipe: defaultRecipe }
@@ -139,6 +149,9 @@ const thingRows: AccessRow[] = [
   { method: 'POST', route: '/api/instruments', ask: () => ({ path: '/api/instruments', body: instrument }), expect: signedIn(201) },
   { method: 'PATCH', route: '/api/instruments/:id', ask: ofInstrument(instrument), expect: ownerOnly(200) },
   { method: 'DELETE', route: '/api/instruments/:id', ask: ofInstrument(), expect: ownerOnly(204) },
+  { method: 'GET', route: '/api/calibrations', ask: () => ({ path: '/api/calibrations' }), expect: signedIn(200) },
+  { method: 'POST', route: '/api/calibrations', ask: () => ({ path: '/api/calibrations', body: calibration }), expect: signedIn(201) },
+  { method: 'DELETE', route: '/api/calibrations/:id', ask: async (world: World) => ({ path: `/api/calibrations/${await makeCalibration(world)}` }), expect: ownerOnly(204) },
   { method: 'GET', route: '/api/targets', ask: () => ({ path: '/api/targets' }), expect: signedIn(200) },
   { method: 'POST', route: '/api/targets', ask: (_: World, actor: ActorName) => ({ path: '/api/targets', body: { name: `New target of ${actor}`, kind: 'star' } }), expect: signedIn(201) },
   { method: 'GET', route: '/api/recipes', ask: () => ({ path: '/api/recipes' }), expect: signedIn(200) },

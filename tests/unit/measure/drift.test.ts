@@ -1,7 +1,8 @@
 /** Scale and orientation from a drift. */
 import { describe, expect, it } from 'vitest'
 import { angleDifference, driftRate } from '../../../shared/astro/angles'
-import { calibrateDrift, combineDrifts, DriftError, driftsMissing, fitTrack, type DriftTrack } from '../../../workers/measure/drift/index'
+import { combineDrifts, driftsMissing } from '../../../shared/astro/drift'
+import { calibrateDrift, DriftError, fitTrack, type DriftTrack } from '../../../workers/measure/drift/index'
 import { fitStraight } from '../../../workers/measure/drift/straight'
 import { rehearsalReader } from '../../../workers/rehearse/index'
 import { demoScene } from '../../../workers/rehearse/demos'
