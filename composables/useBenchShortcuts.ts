@@ -15,6 +15,8 @@ export function useBenchShortcuts(commands: () => BenchCommand[]) {
     const command = commands().find(({ keys }) => keys.split(' or ').includes(chord(event)))
     if (!command || (typing && command.single) || (command.single && !singleKeyShortcuts.value)) return
     if (typing && command.keys.startsWith('Ctrl')) return
+    // A dialog has the keyboard, Escape included, even where its focused button was disabled meanwhile.
+    if (document.querySelector('dialog:modal')) return
     event.preventDefault()
     command.run()
   }

@@ -51,9 +51,11 @@ export interface LucyPlan {
   iterations: number
   /** Level of the dark sky: positivity holds above it. */
   floor: number
-  /** Standard deviation of the noise of a sample; the iteration ends where what is left unexplained is not more. 0: only the count ends it. */
+  /** What differs from half to half, rms; the iteration ends where what is left unexplained is not more. 0: only the count ends it. */
   noise: number
 }
+
+const MOST_FACTOR = 10
 
 /**
  * Richardson 1972, J. Opt. Soc. Am. 62, 55; Lucy 1974, Astron. J. 79, 745: u ← u · [(d / (u ∗ h)) ⋆ h] on n × n values, cyclic,
@@ -72,7 +74,8 @@ export async function richardsonLucy(data: Float32Array, u: Float32Array, blur: 
     for (let i = 0; i < size; i++) {
       const off = data[i]! - blurred[i]!
       square += off * off
-      factor[i] = blurred[i]! > least ? data[i]! / blurred[i]! : data[i]! > least ? 1 : 0
+      // A blurred value near 0 beside bright ones is rounding: no single round may raise anything tenfold.
+      factor[i] = blurred[i]! > least ? Math.min(MOST_FACTOR, data[i]! / blurred[i]!) : data[i]! > least ? 1 : 0
     }
     if (noise > 0 && square <= noise * noise * size) return round
     await pause()
@@ -91,7 +94,9 @@ export async function lucyPlane(image: Float32Array, width: number, height: numb
     // Positivity is meant for light: a little sky noise below the floor is kept as it is by lifting everything.
     const lift = 3 * plan.noise - plan.floor
     const data = Float32Array.from(window, value => Math.max(0, value + lift))
-    const u = data.slice()
+    let mean = 0
+    for (const value of data) mean += value
+    const u = new Float32Array(data.length).fill(mean / data.length)
     rounds = Math.max(rounds, await richardsonLucy(data, u, blur, plan.iterations, plan.noise, pause))
     for (let i = 0; i < u.length; i++) window[i] = u[i]! - lift
   }, pause)

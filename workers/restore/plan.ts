@@ -25,6 +25,8 @@ export interface MeasuredPlane {
   spectra: RadialSpectra | null
   /** Noise of each wavelet scale of the stack, sample units, finest first. */
   scaleNoise: number[]
+  /** What differs from half to half, rms of the mean over all of the plane; null where there are no halves. */
+  spread: number | null
   /** Level of the dark sky, sample units. */
   floor: number
   /** Extended targets: the air; null where the halves do not tell. */
@@ -48,7 +50,7 @@ export function makePlan(restore: Recipe['restore'], measured: Measured): Restor
     strehl: fromAir ? blurStrehl(blur, measured.share) : null, apertureOverR0: fromAir ? blur.apertureOverR0 : null,
     planes: measured.planes.map((plane, p) => {
       const transfer = transfers[p] ?? (() => 1)
-      const noise = plane.scaleNoise[0] ? plane.scaleNoise[0] / waveletNoise[0] : 0
+      const noise = plane.spread ?? (plane.scaleNoise[0] ? plane.scaleNoise[0] / waveletNoise[0] : 0)
       if (method === 'wavelets') {
         const gains = restore.gainBy === 'transfer' ? fittingGains(knownOf(plane.spectra!, transfer), restore.scales) : restore.gains.slice(0, restore.scales)
         return { gains: gains.map(round), thresholds: gains.map((_, j) => (restore.gainBy === 'transfer' ? restore.thresholdSigma : restore.thresholdsSigma[j]!) * (plane.scaleNoise[j] ?? 0)), curve: null, floor: plane.floor, noise }
@@ -69,7 +71,7 @@ export function planByHand(restore: Recipe['restore'], kind: TargetKind, samples
   if (!byHand) return nothing(restoringMethod(restore.method, kind) === 'nothing' ? '' : 'This run was filed without what its restoration needs.')
   return makePlan(restore, {
     kind, share: 1,
-    planes: Array.from({ length: planes }, (_, p) => ({ spectra: null, scaleNoise: ownNoise(samples.subarray(p * size, (p + 1) * size), width, height), floor: 0, blur: null, star: null })),
+    planes: Array.from({ length: planes }, (_, p) => ({ spectra: null, scaleNoise: ownNoise(samples.subarray(p * size, (p + 1) * size), width, height), spread: null, floor: 0, blur: null, star: null })),
   })
 }
 

@@ -114,15 +114,15 @@ export class Restorer {
     const fewer = Math.min(1, stacker.countOf(rung) / Math.max(1, count))
     const halves = stacker.halves(rung)
     const air = star ? null : await this.#blur(pause)
-    const image = halves && !star ? null : await stacker.stack(count)
+    const image = await stacker.stack(count)
     const list: Measured['planes'] = []
     for (let p = 0; p < planes; p++) {
       const spectra = halves ? this.#spectra(halves, p) : null
       if (spectra) for (let i = 0; i < spectra.noise.length; i++) spectra.noise[i]! *= fewer
       list.push({
-        spectra, floor: surveyed.survey.background, scaleNoise: halves ? this.#scaleNoise(halves, p, Math.sqrt(fewer)) : ownNoise(image!.samples.subarray(p * width * height, (p + 1) * width * height), width, height),
+        spectra, floor: this.#floor(image, p), spread: halves && this.#spread(halves, p, fewer), scaleNoise: halves ? this.#scaleNoise(halves, p, Math.sqrt(fewer)) : ownNoise(image.samples.subarray(p * width * height, (p + 1) * width * height), width, height),
         blur: air && { ...air, apertureOverR0: air.apertureOverR0 * (planes === 3 ? colourFactor(p) : 1), lambdaPx: air.lambdaPx * (planes === 3 ? COLOURS[p]! : 1) },
-        star: star ? this.#star(image!, p) : null,
+        star: star ? this.#star(image, p) : null,
       })
       await pause()
     }
@@ -163,6 +163,21 @@ export class Restorer {
     const h = Math.min(MIDDLE, height)
     const [a, b] = halves.map(half => cutOf(half.subarray(plane * size, (plane + 1) * size), 1, width, height, (width - w) >> 1, (height - h) >> 1, w, h)) as [Float32Array, Float32Array]
     return decompose(a.map((value, i) => 0.5 * factor * (value - b[i]!)), w, h, SCALES).details.map(robustSigma)
+  }
+
+  /** Rms of half the difference of the halves; by the root of `fewer` for a stack of more frames. */
+  #spread(halves: [Float32Array, Float32Array], plane: number, fewer: number): number {
+    const size = this.#in.ladder.width * this.#in.ladder.height
+    let square = 0
+    for (let i = plane * size; i < (plane + 1) * size; i++) square += 0.25 * (halves[0][i]! - halves[1][i]!) ** 2
+    return Math.sqrt(square / size * fewer)
+  }
+
+  /** Level of the dark sky of a plane: what a twentieth of the samples are below; 0 where the target fills the field. */
+  #floor({ samples, width, height }: StackImage, plane: number): number {
+    if (this.#in.surveyed.survey.form === 'field') return 0
+    const sorted = samples.slice(plane * width * height, (plane + 1) * width * height).sort()
+    return sorted[Math.floor(0.05 * sorted.length)]!
   }
 
   #star(image: StackImage, plane: number): RadialCurve | null {
