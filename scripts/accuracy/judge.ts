@@ -15,8 +15,8 @@ const FRACTIONS = [0.01, 0.1, 0.5, 1]
 export async function judgeCapture(known: KnownCapture): Promise<Row[]> {
   const rows: Row[] = []
   const { references, strehl } = known
-  const row = (key: string, what: string, value: number, digits: number, want: Row['want']) =>
-    rows.push({ capture: known.name, what, value, digits, want, reference: references[key] ?? null, source: key in references ? known.referenceSource : '' })
+  const row = (key: string, what: string, value: number, digits: number, want: Row['want'], within = 0) =>
+    rows.push({ capture: known.name, what, value, digits, want, reference: references[key] ?? null, within, source: key in references ? known.referenceSource : '' })
 
   const reader = await known.open()
   const pool = nodePool(1)
@@ -74,7 +74,7 @@ export async function judgeCapture(known: KnownCapture): Promise<Row[]> {
       const percent = Math.round(fraction * 100)
       if (!extended) {
         const figures = stackFigures({ stack: image.samples, planes: image.planes, mosaic: false, noise: state.figurer.of(image).noise, count: kept, fraction, plan: state.surveyed.score, optics: known.optics })
-        row(`strehl${percent}`, `Strehl of the stack at ${percent} %`, figures.strehl ?? NaN, 3, 'higher')
+        row(`strehl${percent}`, `Strehl of the stack at ${percent} %`, figures.strehl ?? NaN, 3, 'higher', 0.01)
         const reachable = [...state.ranking.order.slice(0, kept)].reduce((sum, i) => sum + strehl[i]!, 0) / kept
         row('', '  over the mean of these frames\' true Strehl', (figures.strehl ?? NaN) / reachable, 3, 'none')
         row('', '  full width at half maximum, px', figures.fwhmPx ?? NaN, 3, 'none')

@@ -9,15 +9,17 @@ export interface Row {
   reference: number | null
   /** Which way is better; "none" is printed without a verdict. */
   want: 'higher' | 'lower' | 'none'
+  /** Share of the reference by which a value may miss it and still reaches it; 0 unless said. */
+  within?: number
   /** Where the reference comes from. */
   source: string
 }
 
 /** Says whether a row reaches its reference; rounding of the reference's last digit is granted. */
-export function reaches({ value, digits, reference, want }: Row): boolean | null {
+export function reaches({ value, digits, reference, want, within = 0 }: Row): boolean | null {
   if (reference === null || want === 'none') return null
   const grace = 0.5 * 10 ** -digits
-  return want === 'higher' ? value >= reference - grace : value <= reference + grace
+  return want === 'higher' ? value >= reference * (1 - within) - grace : value <= reference * (1 + within) + grace
 }
 
 export function printRows(rows: Row[]): void {
@@ -32,7 +34,7 @@ export function printRows(rows: Row[]): void {
     if (verdict === false) missed++
     const mark = verdict === null ? '  ' : verdict ? 'ok' : '--'
     const value = Number.isFinite(row.value) ? row.value.toFixed(row.digits) : '–'
-    const reference = row.reference === null ? '' : `${row.want === 'higher' ? '≥' : '≤'} ${row.reference.toFixed(row.digits)}`
+    const reference = row.reference === null ? '' : `${row.want === 'higher' ? '≥' : '≤'} ${row.reference.toFixed(row.digits)}${row.within ? ` − ${Math.round(100 * row.within)} %` : ''}`
     console.log(`  ${mark} ${row.what.padEnd(58)} ${value.padStart(9)}  ${reference.padStart(10)}  ${row.source}`)
   }
   console.log(`\n${met} reached, ${missed} not reached`)

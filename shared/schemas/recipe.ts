@@ -11,7 +11,7 @@ export const RECIPE_VERSION = 2
 export const scoreMeasures = ['laplacian', 'peak', 'transfer'] as const
 export const registerMethods = ['correlation', 'speckle', 'centroid'] as const
 export const combineMethods = ['mean'] as const
-export const resampleKernels = ['cubic', 'bilinear', 'nearest'] as const
+export const resampleKernels = ['cubic6', 'cubic', 'bilinear', 'nearest'] as const
 export const windowSizes = [32, 64, 128, 256, 512] as const
 
 export const recipeSchema = z.object({
@@ -99,7 +99,7 @@ export const defaultRecipe: Recipe = {
   score: { rankBy: null, blurPx: null },
   register: { method: 'correlation', windowPx: null, centre: null, referenceFraction: 0.05, refineRounds: 2, alignColours: true },
   keep: { fraction: 0.1 },
-  combine: { method: 'mean', kernel: 'cubic' },
+  combine: { method: 'mean', kernel: 'cubic6' },
   restore: {
     method: null, scales: 6, gainBy: 'transfer', gains: [1.5, 1.5, 1.2, 1, 1, 1], thresholdSigma: 1, thresholdsSigma: [3, 2, 1, 1, 1, 1],
     psf: 'capture', psfCore: 0.3, psfHaloPx: 16, psfReference: null, iterations: 30, stop: 'noise', snr: null,

@@ -81,8 +81,8 @@ describe('a run', () => {
       for (const frame of ranking.order.slice(0, n)) {
         const { samples } = await engine.frame(frame)
         const dx = refined.shifts.dx[frame]!, dy = refined.shifts.dy[frame]!
-        accumulateShifted(samples, width, height, dx, dy, 'cubic', surveyed.scale, 1, sum, scratch)
-        const { x0, x1, y0, y1 } = coveredBy('cubic', width, height, dx, dy)
+        accumulateShifted(samples, width, height, dx, dy, defaultRecipe.combine.kernel, surveyed.scale, 1, sum, scratch)
+        const { x0, x1, y0, y1 } = coveredBy(defaultRecipe.combine.kernel, width, height, dx, dy)
         for (let y = y0; y < y1; y++) for (let x = x0; x < x1; x++) counts[y * width + x]! += 1
       }
       expect(image.count).toBe(n)

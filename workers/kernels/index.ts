@@ -56,8 +56,8 @@ function addSamples(samples: Samples, offset: number, length: number, sum: Int32
 
 interface Exports {
   addShifted(source: number, width: number, height: number,
-    x0: number, x1: number, ox: number, nx: number, wx0: number, wx1: number, wx2: number, wx3: number,
-    y0: number, y1: number, oy: number, ny: number, wy0: number, wy1: number, wy2: number, wy3: number,
+    x0: number, x1: number, ox: number, nx: number, wx0: number, wx1: number, wx2: number, wx3: number, wx4: number, wx5: number,
+    y0: number, y1: number, oy: number, ny: number, wy0: number, wy1: number, wy2: number, wy3: number, wy4: number, wy5: number,
     scale: number, sign: number, sum: number, row: number): void
   fromU8(source: number, out: number, length: number, limit: number): number
   fromU16(source: number, out: number, length: number, limit: number): number
@@ -115,11 +115,11 @@ function simdKernels(bytes: number, rowLength: number, stored: number): Kernels 
     addShifted(source, width, height, dx, dy, kernel, scale, sign, sum) {
       const x = axisShift(kernel, dx, width)
       const y = axisShift(kernel, dy, height)
-      const [wx0 = 0, wx1 = 0, wx2 = 0, wx3 = 0] = x.weights
-      const [wy0 = 0, wy1 = 0, wy2 = 0, wy3 = 0] = y.weights
+      const [wx0 = 0, wx1 = 0, wx2 = 0, wx3 = 0, wx4 = 0, wx5 = 0] = x.weights
+      const [wy0 = 0, wy1 = 0, wy2 = 0, wy3 = 0, wy4 = 0, wy5 = 0] = y.weights
       exports.addShifted(source.byteOffset, width, height,
-        x.from, x.to, x.offset, x.weights.length, wx0, wx1, wx2, wx3,
-        y.from, y.to, y.offset, y.weights.length, wy0, wy1, wy2, wy3,
+        x.from, x.to, x.offset, x.weights.length, wx0, wx1, wx2, wx3, wx4, wx5,
+        y.from, y.to, y.offset, y.weights.length, wy0, wy1, wy2, wy3, wy4, wy5,
         scale, sign, sum.byteOffset, row)
     },
     convert(samples, offset, length, limit, out) {

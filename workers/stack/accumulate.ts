@@ -43,14 +43,15 @@ export function accumulateShifted(
   for (let y = ay.from; y < ay.to; y++) {
     blendRows(source, width, last, y + ay.offset, ay.weights, row)
     const out = y * width
-    if (ax.weights.length === 4) addCubic(row, ax.weights, x0, x1, ox + PAD, scale, sign, sum, out)
+    if (ax.weights.length === 6) addSix(row, ax.weights, x0, x1, ox + PAD, scale, sign, sum, out)
+    else if (ax.weights.length === 4) addCubic(row, ax.weights, x0, x1, ox + PAD, scale, sign, sum, out)
     else if (ax.weights.length === 2) addLinear(row, ax.weights, x0, x1, ox + PAD, scale, sign, sum, out)
     else addWhole(row, x0, x1, ox + PAD, scale, sign, sum, out)
   }
 }
 
 /** Samples of padding before a blended row; it repeats the first sample, and as many after it the last. */
-const PAD = 2
+const PAD = 3
 
 /** Blends the source rows of one output row into `row`, padded at both ends. */
 function blendRows(source: Float32Array, width: number, last: number, y: number, weights: Float32Array, row: Float32Array): void {
@@ -66,6 +67,14 @@ function blendRows(source: Float32Array, width: number, last: number, y: number,
       row[x + PAD] = Math.fround(Math.fround(w0 * source[a + x]!) + Math.fround(w1 * source[b + x]!))
     }
   }
+  else if (weights.length === 6) {
+    const b = at(1), c = at(2), d = at(3), e = at(4), f = at(5)
+    const w0 = weights[0]!, w1 = weights[1]!, w2 = weights[2]!, w3 = weights[3]!, w4 = weights[4]!, w5 = weights[5]!
+    for (let x = 0; x < width; x++) {
+      row[x + PAD] = Math.fround(Math.fround(Math.fround(Math.fround(Math.fround(Math.fround(w0 * source[a + x]!) + Math.fround(w1 * source[b + x]!))
+        + Math.fround(w2 * source[c + x]!)) + Math.fround(w3 * source[d + x]!)) + Math.fround(w4 * source[e + x]!)) + Math.fround(w5 * source[f + x]!))
+    }
+  }
   else {
     const b = at(1), c = at(2), d = at(3)
     const w0 = weights[0]!, w1 = weights[1]!, w2 = weights[2]!, w3 = weights[3]!
@@ -74,8 +83,8 @@ function blendRows(source: Float32Array, width: number, last: number, y: number,
         + Math.fround(w2 * source[c + x]!)) + Math.fround(w3 * source[d + x]!))
     }
   }
-  row[0] = row[1] = row[PAD]!
-  row[width + PAD] = row[width + PAD + 1] = row[width + PAD - 1]!
+  row[0] = row[1] = row[2] = row[PAD]!
+  row[width + PAD] = row[width + PAD + 1] = row[width + PAD + 2] = row[width + PAD - 1]!
 }
 
 function addCubic(row: Float32Array, weights: Float32Array, x0: number, x1: number, offset: number, scale: number, sign: number, sum: Int32Array, out: number): void {
@@ -85,6 +94,17 @@ function addCubic(row: Float32Array, weights: Float32Array, x0: number, x1: numb
     const i = x + offset
     const value = Math.fround(Math.fround(Math.fround(Math.fround(w0 * row[i]!) + Math.fround(w1 * row[i + 1]!))
       + Math.fround(w2 * row[i + 2]!)) + Math.fround(w3 * row[i + 3]!))
+    sum[out + x]! += sign * fixed(Math.fround(value * s))
+  }
+}
+
+function addSix(row: Float32Array, weights: Float32Array, x0: number, x1: number, offset: number, scale: number, sign: number, sum: Int32Array, out: number): void {
+  const w0 = weights[0]!, w1 = weights[1]!, w2 = weights[2]!, w3 = weights[3]!, w4 = weights[4]!, w5 = weights[5]!
+  const s = Math.fround(scale)
+  for (let x = x0; x < x1; x++) {
+    const i = x + offset
+    const value = Math.fround(Math.fround(Math.fround(Math.fround(Math.fround(Math.fround(w0 * row[i]!) + Math.fround(w1 * row[i + 1]!))
+      + Math.fround(w2 * row[i + 2]!)) + Math.fround(w3 * row[i + 3]!)) + Math.fround(w4 * row[i + 4]!)) + Math.fround(w5 * row[i + 5]!))
     sum[out + x]! += sign * fixed(Math.fround(value * s))
   }
 }

