@@ -31,7 +31,7 @@ const fileKinds = ['stack-fits', 'average-fits', 'view-png8', 'thumbnail-png', '
 export async function workThrough(capture: OpenedCapture, recipe: Recipe, names: { target: string, observer: string, recipe: string }): Promise<WorkedRun> {
   const { engine, spec } = capture
   const state = await engine.run(recipe, spec.optics, () => undefined, new AbortController().signal)
-  const result = await runResult(engine, recipe, await recipeHash(recipe))
+  const result = await runResult(engine, recipe, await recipeHash(recipe), true)
   const files = await exportFiles(engine, [...fileKinds], {
     recipe, stretch: result.stretch, fraction: recipe.keep.fraction, targetName: names.target, observer: names.observer, recipeName: names.recipe,
   })

@@ -3,7 +3,7 @@ import { describe, expect, it } from 'vitest'
 import { halfWidth } from '../../workers/score/halfwidth'
 import { noiseError } from '../../workers/run/figures'
 import { halvesNoise } from '../../workers/score/figures'
-import { meanOfBest, pairedChanges, starScatter } from '../../workers/run/scatter'
+import { meanOfBest, pairedChanges, rungBox, starScatter } from '../../workers/run/scatter'
 import type { Ladder } from '../../workers/run/ladder-pass'
 import { rungCounts } from '../../workers/stack/rungs'
 import { gaussianNoise } from './support/noise'
@@ -44,7 +44,7 @@ function stacked(frames: Float32Array[], count: number) {
   }
   const rung = ladder.counts.indexOf(count)
   const mean = Float32Array.from(ladder.sums[rung]!, v => v / count)
-  const changes = pairedChanges(ladder, rung, box, (n, every) => new Int32Array(SIZE * SIZE).fill(Math.ceil(n / every)))
+  const changes = pairedChanges(ladder, rung, k => rungBox(ladder, k, box, (n, every) => new Int32Array(SIZE * SIZE).fill(Math.ceil(n / every))))
   const scatter = starScatter(mean, box, changes, 16, 16, 0, light)
   const best = meanOfBest(order, peak, count)
   const width = halfWidth(mean, SIZE, SIZE, 16, 16, 0, 0)

@@ -2,10 +2,11 @@ import type { Optics, StackImage } from '../api'
 import { halvesNoise, stackFigures, stackLuminance } from '../score/figures'
 import { halfWidth } from '../score/halfwidth'
 import { createScorer, emptyScore } from '../score/scorer'
+import type { FrameScore } from '../score/types'
 import type { StackFigures } from '../../shared/schemas/run'
 import { steadyLn } from '../../shared/steadymath'
 import type { Ladder } from './ladder-pass'
-import { boxAbout, boxLuminance, meanOfBest, pairedChanges, starScatter, type Box } from './scatter'
+import { boxAbout, boxLuminance, meanOfBest, pairedChanges, rungBox, starScatter, type Box, type RungBox } from './scatter'
 import type { Stacker } from './stacker'
 import type { Surveyed } from './survey-frames'
 
@@ -24,12 +25,14 @@ export interface FigurerInput {
 const both = (a: number, b: number): number => Math.sqrt(a * a + b * b)
 
 /** Side of the box about a star in which its scatter is looked at, px. */
-const BOX = 96
+const BOX = 64
 
 /** Figures of stacks of one run; the noise comes from half stacks, so that nothing that was aligned to itself is counted as signal. */
 export class Figurer {
   readonly #in: FigurerInput
   readonly #noise = new Map<number, { noise: number, error: number | null }>()
+  readonly #rungs = new Map<number, RungBox>()
+  #home: { at: FrameScore, box: Box } | null = null
   readonly #widths = new Map<number, { lnFwhm: number, score: number }>()
 
   constructor(input: FigurerInput) {
@@ -56,8 +59,7 @@ export class Figurer {
   /** Share of a star's light in its brightest pixel, and the share's relative standard error (null where too few frames tell it). */
   core(image: StackImage): { share: number, error: number | null } {
     const { width, height, planes } = this.#in.ladder
-    const at = this.#place(image.samples, planes)
-    const box = boxAbout(at.x, at.y, BOX, width, height)
+    const { at, box } = this.#homeOnce()
     const luminance = boxLuminance(image.samples, planes, width, height, box)
     const { peak } = halfWidth(luminance, box.width, box.height, at.x - box.x0, at.y - box.y0, at.background, 0)
     const light = this.#lightIn(box)(luminance)
@@ -71,7 +73,7 @@ export class Figurer {
     const rung = stacker.rungBelow(image.count)
     const halves = stacker.halves(rung)
     if (!halves) return null
-    const at = this.#place(image.samples, planes)
+    const { at } = this.#homeOnce()
     const box = boxAbout(at.x, at.y, Math.max(8, Math.ceil(4 * fwhmPx)), width, height)
     const [a, b] = halves.map(half => boxLuminance(half, planes, width, height, box)) as [Float32Array, Float32Array]
     const { peak } = halfWidth(boxLuminance(image.samples, planes, width, height, box), box.width, box.height, at.x - box.x0, at.y - box.y0, at.background, 0)
@@ -89,10 +91,14 @@ export class Figurer {
     const best = meanOfBest(order, peak, image.count)
     if (best.error === null) return none
     const { width, height, planes } = ladder
-    const at = this.#place(image.samples, planes)
-    const box = boxAbout(at.x, at.y, BOX, width, height)
+    const { at, box } = this.#homeOnce()
     const mean = boxLuminance(image.samples, planes, width, height, box)
-    const scatter = starScatter(mean, box, pairedChanges(ladder, rung, box, (count, every) => stacker.coverage(count, every)), at.x, at.y, at.background, this.#lightIn(box))
+    const changes = pairedChanges(ladder, rung, (k) => {
+      const known = this.#rungs.get(k) ?? rungBox(ladder, k, box, (count, every) => stacker.coverage(count, every))
+      this.#rungs.set(k, known)
+      return known
+    })
+    const scatter = starScatter(mean, box, changes, at.x, at.y, at.background, this.#lightIn(box))
     if (scatter.fwhm === null || scatter.lnShare === null) return none
     const fewer = Math.sqrt(stacker.countOf(rung) / image.count)
     const slope = this.#widthByScore(image.count)
@@ -114,6 +120,16 @@ export class Figurer {
     }
   }
 
+  /** Place of the star and a box about it, the same for all stacks, so that the rungs are cut once. */
+  #homeOnce(): { at: FrameScore, box: Box } {
+    if (this.#home) return this.#home
+    const { ladder: { counts, sums, scale, planes, width, height } } = this.#in
+    const last = counts.length - 1
+    const at = this.#place(meanOfSum(sums[last]!, counts[last]! * scale), planes)
+    this.#home = { at, box: boxAbout(at.x, at.y, BOX, width, height) }
+    return this.#home
+  }
+
   /** Change of the logarithm of the width with that of the mean score, from two rungs an octave apart. */
   #widthByScore(count: number): number {
     const { stacker, ladder } = this.#in
@@ -129,9 +145,8 @@ export class Figurer {
     if (known) return known
     const { ladder: { counts, sums, scale, planes, width, height }, order, peak } = this.#in
     const count = counts[rung]!
-    const samples = Float32Array.from(sums[rung]!, sum => sum / (count * scale))
-    const at = this.#place(samples, planes)
-    const box: Box = boxAbout(at.x, at.y, BOX, width, height)
+    const { at, box } = this.#homeOnce()
+    const samples = meanOfSum(sums[rung]!, count * scale)
     const { fwhm } = halfWidth(boxLuminance(samples, planes, width, height, box), box.width, box.height, at.x - box.x0, at.y - box.y0, at.background, 0)
     const { mean } = meanOfBest(order, peak, count)
     if (fwhm === null || !(mean > 0)) return null
@@ -169,6 +184,12 @@ export class Figurer {
     const [a, b] = halves.map(half => stackLuminance(half, planes, false, width, height)) as [Float32Array, Float32Array]
     return { noise: halvesNoise(a, b), error: noiseError(a, b, width, height) }
   }
+}
+
+function meanOfSum(sum: Float64Array, by: number): Float32Array {
+  const out = new Float32Array(sum.length)
+  for (let i = 0; i < out.length; i++) out[i] = sum[i]! / by
+  return out
 }
 
 /** Interleaved sets of squares of TILE px; each set covers the whole image evenly. */

@@ -13,7 +13,7 @@ import { halvesNoise, stackLuminance } from '../score/figures'
 import { createScorer, emptyScore } from '../score/scorer'
 import { lambdaOverDPx } from '../../shared/optics'
 import { canonicalJson } from '../../shared/recipe/canonical'
-import type { Recipe } from '../../shared/schemas/recipe'
+import { restoringMethod, type Recipe } from '../../shared/schemas/recipe'
 import type { RestorePlan } from '../../shared/schemas/restoration'
 import type { ShiftTable } from './columns'
 import type { Ladder } from './ladder-pass'
@@ -44,6 +44,7 @@ export class Restorer {
 
   /** The numbers that a recipe's restoration comes to for the stack of `count` frames. With `near`, those of the last count will do. */
   async plan(count: number, how: Recipe['restore'], pause: Pause, near = false): Promise<RestorePlan> {
+    if (restoringMethod(how.method, this.#in.surveyed.survey.kind) === 'nothing') return makePlan(how, { kind: this.#in.surveyed.survey.kind, share: 1, planes: [] })
     const at = near && this.#measured ? this.#measured.count : count
     const key = `${at} ${canonicalJson(how)}`
     if (this.#plan?.key === key) return this.#plan.plan

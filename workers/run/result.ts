@@ -4,8 +4,8 @@ import { keepCount, proofFractions, type RunResult } from '../../shared/schemas/
 import type { Engine } from './engine'
 import { countSetAside } from './rank'
 
-/** Everything that a finished run states about itself. Throws where no run is finished. */
-export async function runResult(engine: Engine, recipe: Recipe, recipeHash: string): Promise<RunResult> {
+/** Everything that a finished run states about itself; with its evidence, which takes its time, where that is asked for. Throws where no run is finished. */
+export async function runResult(engine: Engine, recipe: Recipe, recipeHash: string, withEvidence = false): Promise<RunResult> {
   const state = engine.state
   if (!state) throw new Error('Nothing is stacked yet: run the recipe first.')
   const { surveyed: { survey, score }, stacker, figurer, ladder, refined, graded } = state
@@ -23,6 +23,6 @@ export async function runResult(engine: Engine, recipe: Recipe, recipeHash: stri
     ranked: stacker.ranked, setAside: countSetAside(refined.shifts.setAside),
     figures: figurer.of(image), proofs, average: known.get('average') ?? figurer.ofAverage(engine.averageShown(), graded.table.count),
     ladder: { counts, width, height, planes }, ...(stacker.colours ? { colours: stacker.colours } : {}),
-    stretch: displayRange(image), restoration, evidence: await engine.evidence(), starTransfer: await engine.starTransfer(count), provenance: engine.provenance(),
+    stretch: displayRange(image), restoration, ...(withEvidence ? { evidence: await engine.evidence(), starTransfer: await engine.starTransfer(count) } : {}), provenance: engine.provenance(),
   }
 }

@@ -40,23 +40,28 @@ export function boxLuminance(samples: ArrayLike<number>, planes: 1 | 3, width: n
   return stackLuminance(out, planes, false, box.width, box.height)
 }
 
+/** Of one rung, in the box: sums of all frames and of those of even place, and how many of each cover a pixel. */
+export type RungBox = Record<'sum' | 'even' | 'all' | 'half', Float32Array>
+
+export function rungBox({ counts, sums, halves, planes, width, height }: Ladder, rung: number, box: Box, coverage: (count: number, every: 1 | 2) => Int32Array): RungBox {
+  return {
+    sum: boxLuminance(sums[rung]!, planes, width, height, box), even: boxLuminance(halves[rung]!, planes, width, height, box),
+    all: boxLuminance(coverage(counts[rung]!, 1), 1, width, height, box), half: boxLuminance(coverage(counts[rung]!, 2), 1, width, height, box),
+  }
+}
+
 /** Most strata; neighbouring rungs are put together beyond. */
-const STRATA = 24
+const STRATA = 16
 
 /**
  * What the mean of the frames up to a rung would change by if, within one stratum of ranks, one half stood for both: one
  * box of luminance per stratum, in sample units. The squares of these changes are the variance of every pixel.
  */
-export function pairedChanges(ladder: Ladder, rung: number, box: Box, coverage: (count: number, every: 1 | 2) => Int32Array): Float32Array[] {
-  const { counts, sums, halves, scale, planes, width, height } = ladder
+export function pairedChanges({ counts, scale }: Pick<Ladder, 'counts' | 'scale'>, rung: number, at: (rung: number) => RungBox): Float32Array[] {
   const total = counts[rung]!
-  const at = (k: number) => ({
-    sum: boxLuminance(sums[k]!, planes, width, height, box), even: boxLuminance(halves[k]!, planes, width, height, box),
-    all: boxLuminance(coverage(counts[k]!, 1), 1, width, height, box), half: boxLuminance(coverage(counts[k]!, 2), 1, width, height, box),
-  })
-  const nothing = () => new Float32Array(box.width * box.height)
+  const nothing = () => new Float32Array(at(rung).sum.length)
   const changes: Float32Array[] = []
-  let before: Record<'sum' | 'even' | 'all' | 'half', Float32Array> = { sum: nothing(), even: nothing(), all: nothing(), half: nothing() }
+  let before: RungBox = { sum: nothing(), even: nothing(), all: nothing(), half: nothing() }
   let first = 0
   for (let k = 0; k <= rung; k++) {
     const last = counts[k]!
@@ -84,18 +89,17 @@ export interface StarScatter { fwhm: number | null, lnShare: number | null }
 /** Standard errors of full width (px) and of the peak's share of the light (relative) from the changes of pairedChanges. `lightOf` measures all light of a box. */
 export function starScatter(mean: Float32Array, box: Box, changes: readonly Float32Array[], x: number, y: number, background: number, lightOf: (image: Float32Array) => number): StarScatter {
   const { width, height } = box
-  const of = (change: Float32Array, sign: 1 | -1) => {
-    const image = mean.map((value, i) => value + sign * change[i]!)
+  const of = (image: Float32Array) => {
     const found = halfWidth(image, width, height, x - box.x0, y - box.y0, background, 0)
     return { fwhm: found.fwhm ?? NaN, lnShare: steadyLn(found.peak / lightOf(image)) }
   }
+  const here = of(mean)
   let fwhm = 0
   let lnShare = 0
   for (const change of changes) {
-    const more = of(change, 1)
-    const less = of(change, -1)
-    fwhm += (0.5 * (more.fwhm - less.fwhm)) ** 2
-    lnShare += (0.5 * (more.lnShare - less.lnShare)) ** 2
+    const there = of(mean.map((value, i) => value + change[i]!))
+    fwhm += (there.fwhm - here.fwhm) ** 2
+    lnShare += (there.lnShare - here.lnShare) ** 2
   }
   const root = (square: number) => (changes.length >= 3 && Number.isFinite(square) ? Math.sqrt(square) : null)
   return { fwhm: root(fwhm), lnShare: root(lnShare) }
