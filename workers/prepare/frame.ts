@@ -34,15 +34,20 @@ export const plainConvert: Convert = (samples, offset, length, limit, out) => {
 function load(samples: Samples, offset: number, length: number, plan: PreparePlan, out: Float32Array, convert: Convert): number {
   const limit = plan.saturation ?? Infinity
   let clipped = convert(samples, offset, length, limit, out)
-  const { hotPixels, repairFrom } = plan
+  const { hotPixels } = plan
   for (let h = 0; h < hotPixels.length; h++) {
     const i = hotPixels[h]!
     if (samples[offset + i]! >= limit) clipped--
-    const k = 4 * h
-    out[i] = 0.25 * (samples[offset + repairFrom[k]!]! + samples[offset + repairFrom[k + 1]!]!
-      + samples[offset + repairFrom[k + 2]!]! + samples[offset + repairFrom[k + 3]!]!)
+    out[i] = repaired(samples, offset, plan, h)
   }
   return clipped
+}
+
+/** What stands in for faulty pixel number h: the mean of its four sound neighbours. */
+function repaired(samples: Samples, offset: number, { repairFrom }: PreparePlan, h: number): number {
+  const k = 4 * h
+  return 0.25 * (samples[offset + repairFrom[k]!]! + samples[offset + repairFrom[k + 1]!]!
+    + samples[offset + repairFrom[k + 2]!]! + samples[offset + repairFrom[k + 3]!]!)
 }
 
 /**
@@ -70,6 +75,23 @@ export function prepareLuminance(samples: Samples, offset: number, plan: Prepare
   const clipped = load(samples, offset, size, plan, raw, convert)
   binomial(raw, width, height, out)
   return clipped
+}
+
+/**
+ * The rows [from, to) of the luminance alone, where a frame's other rows are not looked at: the same values as prepareLuminance
+ * gives there. Colour and mosaics are made whole.
+ */
+export function prepareRows(samples: Samples, offset: number, plan: PreparePlan, from: number, to: number, out: Float32Array, convert: Convert = plainConvert): void {
+  if (plan.planes === 3 || plan.mosaic !== 'none') {
+    prepareLuminance(samples, offset, plan, out, convert)
+    return
+  }
+  const first = Math.max(0, from) * plan.width
+  const last = Math.min(plan.height, to) * plan.width
+  if (last <= first) return
+  convert(samples, offset + first, last - first, Infinity, first === 0 && last === out.length ? out : out.subarray(first, last))
+  const { hotPixels } = plan
+  for (let h = 0; h < hotPixels.length; h++) if (hotPixels[h]! >= first && hotPixels[h]! < last) out[hotPixels[h]!] = repaired(samples, offset, plan, h)
 }
 
 /** Planes for stacking, outPlanes(plan) × height × width, in sample units; mosaics by Malvar-He-Cutler. */

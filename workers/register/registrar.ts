@@ -6,6 +6,8 @@ import type { FrameShift, RegisterPlan } from './types'
 export interface Registrar {
   /** @param expectedX place of the target in this frame, px, as the scorer found it */
   register(luminance: Float32Array, expectedX: number, expectedY: number, out: FrameShift): void
+  /** Rows that are looked at for a target expected at a row: this many above and below it; absent where it may be any. */
+  readonly reach?: number
 }
 
 export const emptyShift = (): FrameShift => ({ dx: 0, dy: 0, confidence: 0, sure: false, transfer: NaN })

@@ -63,6 +63,7 @@ export function starRegistrar(plan: RegisterPlan): Registrar {
   const found: Maximum = { x: 0, y: 0, value: 0 }
 
   return {
+    reach: n / 2 + 1,
     register(luminance, expectedX, expectedY, out) {
       const x0 = Math.round(expectedX) - n / 2
       const y0 = Math.round(expectedY) - n / 2

@@ -4,7 +4,7 @@
  * and the single-threaded pool all hold one.
  */
 import { makeKernels, type Kernels } from '../kernels/index'
-import { prepareColour, prepareLuminance } from '../prepare/frame'
+import { prepareColour, prepareLuminance, prepareRows } from '../prepare/frame'
 import type { PreparePlan } from '../prepare/types'
 import { createRegistrar, emptyShift, type Registrar } from '../register/registrar'
 import { createScorer, emptyScore, type Scorer } from '../score/scorer'
@@ -105,8 +105,11 @@ export class Computer {
     const reply = shiftReply(picks.length)
     const plan = this.#setup!.prepare
     const stride = plan.width * plan.height * plan.planes
+    const reach = this.#registrar!.reach ?? Infinity
     for (let i = 0; i < picks.length; i++) {
-      prepareLuminance(batch.samples, batch.offset + picks[i]! * stride, plan, this.#luminance, this.#kernels!.convert)
+      const middle = Math.round(y[i]!)
+      const [from, to] = Number.isFinite(reach) ? [middle - reach, middle + reach] : [0, plan.height]
+      prepareRows(batch.samples, batch.offset + picks[i]! * stride, plan, from, to, this.#luminance, this.#kernels!.convert)
       this.#shiftInto(reply, i, x[i]!, y[i]!)
     }
     return reply

@@ -11,7 +11,7 @@ import type { Recipe } from '../../shared/schemas/recipe'
 export interface StageKeys { survey: string, grade: string, refine: string, ladder: string }
 
 /** Raise when the arithmetic of any stage changes, so that nothing stale is taken from a browser's store. */
-const CORE_VERSION = 4
+const CORE_VERSION = 5
 
 export async function stageKeys(facts: CaptureFacts, recipe: Recipe): Promise<StageKeys> {
   const { register } = recipe

@@ -59,6 +59,7 @@ function compactScorer(plan: ScorePlan): Scorer {
   const blocks = createBlocks(width, height)
   const { columns, rows, means } = blocks
   const beside = new Float32Array(means.length)
+  const across3 = new Float64Array(means.length)
   // A star's peak is taken at full sampling whatever the smoothing.
   const smoother = form === 'disc' ? createSmoother(blurPx, side, side) : fullSmoother(blurPx, side)
   const { bin, out: smooth } = smoother
@@ -72,27 +73,15 @@ function compactScorer(plan: ScorePlan): Scorer {
   return {
     score(luminance, clippedSamples, out) {
       fillBlocks(luminance, width, blocks)
-      let best = 0
-      let bestSum = -Infinity
-      for (let r = 0; r < rows; r++) {
-        for (let c = 0; c < columns; c++) {
-          let sum = 0
-          for (let j = Math.max(0, r - 1); j <= Math.min(rows - 1, r + 1); j++) {
-            for (let k = Math.max(0, c - 1); k <= Math.min(columns - 1, c + 1); k++) sum += means[j * columns + k]!
-          }
-          // Beyond the edge lies sky, as far as we know: no bonus for the border.
-          if (sum > bestSum) { bestSum = sum; best = r * columns + c }
-        }
-      }
+      const best = brightest(means, columns, rows, across3)
       let x = ((best % columns) + 0.5) * blocks.side - 0.5
       let y = (Math.floor(best / columns) + 0.5) * blocks.side - 0.5
       // Background: median of the blocks beside the window, or the lower quarter where the window fills the frame.
       let n = 0
       for (let r = 0; r < rows; r++) {
+        const apart = Math.abs((r + 0.5) * blocks.side - 0.5 - y) > 0.5 * side
         for (let c = 0; c < columns; c++) {
-          const dx = Math.abs((c + 0.5) * blocks.side - 0.5 - x)
-          const dy = Math.abs((r + 0.5) * blocks.side - 0.5 - y)
-          if (Math.max(dx, dy) > 0.5 * side) beside[n++] = means[r * columns + c]!
+          if (apart || Math.abs((c + 0.5) * blocks.side - 0.5 - x) > 0.5 * side) beside[n++] = means[r * columns + c]!
         }
       }
       let share = 0.5
@@ -152,6 +141,31 @@ function compactScorer(plan: ScorePlan): Scorer {
       out.saturated = clippedSamples >= plan.saturatedSamples
     },
   }
+}
+
+/**
+ * The block whose 3 × 3 surroundings are brightest, the first of equals. Beyond the edge lies sky, as far as we know: no bonus for
+ * the border.
+ * @param sums working memory, one value a block
+ */
+function brightest(means: Float32Array, columns: number, rows: number, sums: Float64Array): number {
+  for (let r = 0; r < rows; r++) {
+    const row = r * columns
+    sums[row] = means[row]! + (columns > 1 ? means[row + 1]! : 0)
+    for (let i = row + 1; i < row + columns - 1; i++) sums[i] = means[i - 1]! + means[i]! + means[i + 1]!
+    if (columns > 1) sums[row + columns - 1] = means[row + columns - 2]! + means[row + columns - 1]!
+  }
+  let best = 0
+  let bestSum = -Infinity
+  for (let r = 0; r < rows; r++) {
+    const up = r > 0 ? -columns : 0
+    const down = r < rows - 1 ? columns : 0
+    for (let i = r * columns; i < (r + 1) * columns; i++) {
+      const sum = (up === 0 ? 0 : sums[i + up]!) + sums[i]! + (down === 0 ? 0 : sums[i + down]!)
+      if (sum > bestSum) { bestSum = sum; best = i }
+    }
+  }
+  return best
 }
 
 /** True where more than a tenth of some edge of the block image lies over the threshold. */

@@ -15,12 +15,16 @@ import type { FrameScore, Survey, TargetForm } from './types'
 
 const CHOOSE = { score: { rankBy: 'peak' as const, blurPx: null }, register: { method: 'correlation' as const, windowPx: null, centre: null, referenceFraction: 0.05, refineRounds: 2, alignColours: false } }
 
+/** Frames that tell the noise: each gives it from some ten thousand samples. */
+const NOISE_FRAMES = 16
+
 /**
  * @param frames luminance of 16-64 frames spread over the capture, width × height each
  * @param fromMosaic whether the luminance was made from a mosaic (neighbours then share noise)
  */
 export function survey(frames: Float32Array[], width: number, height: number, fromMosaic = false): Survey {
-  const noise = median(frames.map(frame => frameNoise(frame, width, height, fromMosaic ? 3 : 1)))
+  const every = Math.max(1, Math.floor(frames.length / NOISE_FRAMES))
+  const noise = median(frames.filter((_, i) => i % every === 0).map(frame => frameNoise(frame, width, height, fromMosaic ? 3 : 1)))
   const shape = targetForm(frames, width, height)
   const form = shape.form
   const signal = findSignal(frames, width, height, noise)
