@@ -26,12 +26,12 @@ export const reviewPlans: Record<string, ReviewPlan> = {
   'first-planet': {
     ask: 'My first colour capture. What should I change?',
     pins: [{ place: 0, dx: 14, dy: -25, text: 'The oval is there, but washed out: half of the frames is too many for this air.' }],
-    remarks: [{ by: 'ines', pin: 0, text: 'I kept more because the single frames look so noisy.' }, { by: 'matthis', pin: 0, text: 'A fifth still has some fifty frames. Try it, and restore the two finest scales with care.' }],
-    proposal: { text: 'A fifth of the frames, two scales restored.', change: recipe => ({ ...recipe, keep: { fraction: 0.2 }, restore: { ...recipe.restore, method: 'wavelets', scales: 2, gainBy: 'hand', gains: [1.8, 1.8, 1, 1, 1, 1], thresholdsSigma: [3, 3, 1, 1, 1, 1] } }) },
+    remarks: [{ by: 'ines', pin: 0, text: 'I kept more because the single frames look so noisy.' }, { by: 'matthis', pin: 0, text: 'A fifth still has some fifty frames. Try it, and restore with the gains that the capture itself tells.' }],
+    proposal: { text: 'A fifth of the frames, restored with measured gains.', change: recipe => ({ ...recipe, keep: { fraction: 0.2 }, restore: { ...recipe.restore, method: 'wavelets' } }) },
     verdict: { verdict: 'another-pass', text: 'Good capture. One more pass with fewer frames, please.' },
   },
   'second-planet': {
-    ask: 'The second pass, as you asked: a fifth of the frames, two scales restored.',
+    ask: 'The second pass, as you asked: a fifth of the frames, restored with measured gains.',
     pins: [], remarks: [], proposal: null, verdict: null,
   },
   'first-triple': {

@@ -39,6 +39,7 @@ export const targets: z.input<typeof targetBody>[] = [
 const pairs: Recipe = { ...defaultRecipe, score: { rankBy: 'peak', blurPx: 1 }, register: { ...defaultRecipe.register, windowPx: 64 } }
 const planets: Recipe = {
   ...defaultRecipe, score: { rankBy: 'transfer', blurPx: 1.5 }, register: { ...defaultRecipe.register, referenceFraction: 0.1 }, keep: { fraction: 0.5 },
+  restore: { ...defaultRecipe.restore, method: 'nothing' },
 }
 
 /** Versions in order, each with what changed. A fork starts from the latest version of its origin. */
@@ -63,7 +64,7 @@ export const recipes = {
     description: 'For a planet through a colour mosaic. Ranks by how much of the reference’s detail a frame carries, so that grain does not choose the frames.',
     versions: [
       { recipe: planets, note: '' },
-      { recipe: { ...planets, keep: { fraction: 0.2 }, restore: { ...planets.restore, method: 'wavelets', scales: 2, gainBy: 'hand', gains: [1.8, 1.8, 1, 1, 1, 1], thresholdsSigma: [3, 3, 1, 1, 1, 1] } }, note: 'Fewer frames and two scales restored, after the review of the first try.' },
+      { recipe: { ...planets, keep: { fraction: 0.2 }, restore: { ...planets.restore, method: 'wavelets' } }, note: 'Fewer frames, and detail restored with measured gains, after the review of the first try.' },
     ],
   },
 } satisfies Record<string, {
@@ -107,7 +108,7 @@ export const runs: RunPlan[] = [
   { key: 'patch', owner: 'jorin', target: 'Quarry patch', capture: 'terrain1', recipe: 'planets', version: 1, replaces: null, fileRaw: false,
     note: 'Low sun on the walls. Ines’s planet recipe works here as well.' },
   { key: 'second-planet', owner: 'ines', target: 'Saffron planet', capture: 'planet1', recipe: 'planets', version: 2, replaces: 'first-planet', fileRaw: true,
-    note: 'The same capture again with fewer frames and two scales restored, as Matthis asked. The raw capture is filed with it.' },
+    note: 'The same capture again with fewer frames and detail restored with measured gains, as Matthis asked. The raw capture is filed with it.' },
   { key: 'second-double', owner: 'matthis', target: 'Tern double', capture: 'double2', recipe: 'pairs', version: 2, replaces: null, fileRaw: false,
     note: 'Poorer air than Ines had; for comparison.' },
   { key: 'third-double', owner: 'jorin', target: 'Tern double', capture: 'double2', recipe: 'pairs', version: 1, replaces: null, fileRaw: false,
