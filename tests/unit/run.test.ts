@@ -110,7 +110,7 @@ describe('repeatability', () => {
     const first = open()
     await run(first.engine)
     const wanted = await bytesOf(first.engine)
-    for (const [workers, blockFrames, budgetBytes] of [[1, 7, 2 ** 28], [2, 150, 2 ** 28], [3, 11, 2 ** 28], [2, 16, 200_000]] as const) {
+    for (const [workers, blockFrames, budgetBytes] of [[1, 7, 2 ** 28], [2, 150, 2 ** 28], [3, 11, 2 ** 28], [8, 1, 2 ** 28], [2, 16, 200_000]] as const) {
       const pool = workers > 1 ? nodePool(workers) : new InlinePool()
       const { engine } = open({ pool, blockFrames, budgetBytes })
       await run(engine)
@@ -214,6 +214,32 @@ describe('cancel and go on', () => {
     const whole = open()
     await run(whole.engine)
     expect(await bytesOf(again.engine)).toEqual(await bytesOf(whole.engine))
+  })
+})
+
+describe('an unfinished ladder in the store', () => {
+  it('of which a part was dropped is added up anew, to the same bytes', async () => {
+    const store = new MemoryStore()
+    let adding = false
+    const options = { store, blockFrames: 10, checkpointMs: 0, budgetBytes: 100_000 }
+    const { engine } = open(options, (first) => { if (adding && first >= 100) throw new Error('the page went away') })
+    await expect(run(engine, defaultRecipe, (event) => { if (event.kind === 'progress') adding = event.progress.pass === 'ladder' })).rejects.toThrow('the page went away')
+    const parts = [...store.files.keys()].filter(name => /^laddering-.+-.+-\d+$/.test(name))
+    expect(parts.length).toBeGreaterThan(1)
+    store.files.delete(parts.at(-1)!)
+    const again = open(options)
+    await run(again.engine)
+    const whole = open()
+    await run(whole.engine)
+    expect(await bytesOf(again.engine)).toEqual(await bytesOf(whole.engine))
+  })
+
+  it('of two pages at once gives both the same bytes', async () => {
+    const store = new MemoryStore()
+    const options = { store, blockFrames: 10, checkpointMs: 0, budgetBytes: 100_000 }
+    const [one, other] = [open(options), open({ ...options, blockFrames: 7 })]
+    await Promise.all([run(one.engine), run(other.engine)])
+    expect(await bytesOf(one.engine)).toEqual(await bytesOf(other.engine))
   })
 })
 

@@ -44,12 +44,15 @@ export async function ladderPass(context: PassContext, surveyed: Surveyed, shift
   // Each worker numbers its own rungs; a rung has two slots, for odd and even ranks.
   const owned = new Array<number>(pool.size).fill(0)
   const local = owner.map(worker => owned[worker]!++)
-  await toAll(pool, worker => pool.call(worker, { op: 'sums', plan, slots: owned[worker]! * 2, planes, scale, kernel }))
+  const openSums = () => toAll(pool, worker => pool.call(worker, { op: 'sums', plan, slots: owned[worker]! * 2, planes, scale, kernel }))
+  await openSums()
   const feed = new Feed(pool, signal)
   const rungOf = (frame: number) => rungOfRank(counts, ranking.rank[frame]! - 1)
   const slotOf = (frame: number) => local[rungOf(frame)]! * 2 + ((ranking.rank[frame]! - 1) & 1)
   const places = { worker: owner.flatMap(worker => [worker, worker]), slot: local.flatMap(k => [2 * k, 2 * k + 1]) }
-  const done = (await options.keeper?.restore(pool, places)) ?? new Uint8Array(ranking.rank.length)
+  const restored = await options.keeper?.restore(pool, places)
+  if (options.keeper && !restored) await openSums()
+  const done = restored ?? new Uint8Array(ranking.rank.length)
   const left = ranking.order.filter(frame => done[frame] === 0).sort()
   progress.begin('ladder', 0, ranking.order.length, ranking.order.length - left.length)
   let savedAt = performance.now()

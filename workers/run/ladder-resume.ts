@@ -8,7 +8,11 @@ const MOST_BYTES = 384 * 2 ** 20
 export interface SumPlaces { worker: number[], slot: number[] }
 
 /** The head of a saved, unfinished ladder; its sums lie beside it, one by one. */
-interface Head { generation: number, done: Uint8Array, filled: Uint8Array }
+interface Head { generation: string, done: Uint8Array, filled: Uint8Array }
+
+/** Tells the generations of two pages apart that work on the same ladder: neither may overwrite what the other's head names. */
+const page = Math.random().toString(36).slice(2, 10)
+let generations = 0
 
 /**
  * Saves and restores an unfinished ladder. The sums of a new generation are written beside the old ones, the
@@ -17,7 +21,7 @@ interface Head { generation: number, done: Uint8Array, filled: Uint8Array }
 export class LadderKeeper {
   readonly #stages: Stages
   readonly #key: string
-  #generation = 0
+  #generation = ''
   #filled: Uint8Array | null = null
 
   constructor(stages: Stages, key: string) {
@@ -25,7 +29,10 @@ export class LadderKeeper {
     this.#key = key
   }
 
-  /** Puts saved sums back into the workers. Returns which frames are in them, or null. */
+  /**
+   * Puts saved sums back into the workers. Returns which frames are in them, or null; then some sums may have been put back
+   * all the same (another page, or a full store, has dropped the rest), and all must be opened anew.
+   */
   async restore(pool: Pool, { worker, slot }: SumPlaces): Promise<Uint8Array | null> {
     const head = await this.#stages.load<Head>('laddering', this.#key)
     if (!head || head.filled.length !== worker.length) return null
@@ -44,7 +51,7 @@ export class LadderKeeper {
     if (worker.length * sumBytes > MOST_BYTES) return
     const old = { generation: this.#generation, filled: this.#filled }
     const filled = new Uint8Array(worker.length)
-    this.#generation += 1
+    this.#generation = `${page}${++generations}`
     for (let k = 0; k < worker.length; k++) {
       const { sums: [sum] } = await pool.call(worker[k]!, { op: 'peek', slots: [slot[k]!] })
       if (sum!.length === 0) continue
@@ -61,9 +68,9 @@ export class LadderKeeper {
     await this.#drop(this.#generation, this.#filled)
   }
 
-  async #drop(generation: number, filled: Uint8Array | null): Promise<void> {
+  async #drop(generation: string, filled: Uint8Array | null): Promise<void> {
     for (let k = 0; k < (filled?.length ?? 0); k++) if (filled![k]) await this.#stages.drop('laddering', this.#name(generation, k))
   }
 
-  #name(generation: number, k: number): string { return `${this.#key}-${generation}-${k}` }
+  #name(generation: string, k: number): string { return `${this.#key}-${generation}-${k}` }
 }

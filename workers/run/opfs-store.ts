@@ -18,11 +18,10 @@ export function opfsStore(quota = QUOTA): StageStore | null {
         return null
       }
     },
-    async write(name, bytes) {
+    write: (name, bytes) => locked(async () => {
       if (bytes.length > quota / 2) return
       const into = await folder()
       await makeRoom(into, bytes.length, quota, name)
-      // The handle is exclusive: where another tab writes the same result, that one is as good.
       const handle = await (await into.getFileHandle(name, { create: true })).createSyncAccessHandle()
       try {
         handle.truncate(0)
@@ -32,11 +31,16 @@ export function opfsStore(quota = QUOTA): StageStore | null {
       finally {
         handle.close()
       }
-    },
+    }),
     async remove(name) {
       await (await folder()).removeEntry(name).catch(() => undefined)
     },
   }
+}
+
+/** One writer at a time over all pages: rooms are made and files written without another page in between; a lock ends with its page. */
+function locked(write: () => Promise<void>): Promise<void> {
+  return navigator.locks ? navigator.locks.request(FOLDER, write) as Promise<void> : write()
 }
 
 /** Drops the oldest results until `bytes` more fit. */
