@@ -53,6 +53,7 @@ test.beforeAll(async () => {
   await engine.run(defaultRecipe, null, () => undefined, new AbortController().signal)
   const [stack] = await exportFiles(engine, ['stack-fits'], { recipe: defaultRecipe, stretch: { black: 0, white: 1, midtone: 0.5 } as never, fraction: defaultRecipe.keep.fraction, targetName: '', observer: '', recipeName: null })
   wanted = dataOf(Buffer.from(stack!.bytes))
+  expect(wanted.length).toBeGreaterThanOrEqual(128 * 128 * 4)
   engine.close()
   await source.close()
 })
