@@ -7,6 +7,7 @@ import * as club from './0001_club'
 import * as archive from './0002_archive'
 import * as review from './0003_review'
 import * as calibrations from './0004_calibrations'
+import * as measures from './0005_measures'
 
 export interface Migration { up(knex: Knex): Promise<void>, down(knex: Knex): Promise<void> }
 
@@ -15,6 +16,7 @@ const migrations: { name: string, migration: Migration }[] = [
   { name: '0002_archive', migration: archive },
   { name: '0003_review', migration: review },
   { name: '0004_calibrations', migration: calibrations },
+  { name: '0005_measures', migration: measures },
 ]
 
 export const migrationSource: Knex.MigrationSource<typeof migrations[number]> = {

@@ -9,7 +9,7 @@ const isDay = (text: string) => {
   const time = Date.parse(`${text}T00:00:00Z`)
   return !Number.isNaN(time) && new Date(time).toISOString().slice(0, 10) === text
 }
-const nightSchema = z.string().regex(/^\d{4}-\d{2}-\d{2}$/).refine(isDay, 'This day is not in the calendar.')
+export const nightSchema = z.string().regex(/^\d{4}-\d{2}-\d{2}$/).refine(isDay, 'This day is not in the calendar.')
 const sha256Schema = z.string().regex(/^[0-9a-f]{64}$/)
 const noteSchema = z.string().trim().max(4000)
 

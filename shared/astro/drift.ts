@@ -1,5 +1,6 @@
 /** Several drift calibrations together. */
 import { angleDifference, reduce360 } from './angles'
+import { weightedMean } from './combine'
 
 /** What one drift says; errors are standard errors. */
 export interface DriftValues { scaleArcsecPerPx: number, scaleErr: number, westDirectionDeg: number, angleErr: number }
@@ -28,15 +29,6 @@ export function combineDrifts(drifts: readonly DriftValues[]): CombinedDrifts {
     westDirectionDeg: reduce360(first.westDirectionDeg + angle.value), angleErr: angle.err,
     scatter: { scale: scale.chiSquared, angle: angle.chiSquared, freedom: drifts.length - 1 },
   }
-}
-
-function weightedMean(values: readonly { value: number, err: number }[]): { value: number, err: number, chiSquared: number } {
-  const weights = values.map(({ err }) => 1 / (err * err))
-  const total = weights.reduce((sum, weight) => sum + weight, 0)
-  const value = values.reduce((sum, one, k) => sum + weights[k]! * one.value, 0) / total
-  const chiSquared = values.reduce((sum, one, k) => sum + weights[k]! * (one.value - value) ** 2, 0)
-  const freedom = values.length - 1
-  return { value, chiSquared, err: Math.sqrt(Math.max(1, freedom > 0 ? chiSquared / freedom : 1) / total) }
 }
 
 /** How many more drifts like these reach a wanted error: 0 where it is reached. The error of a mean falls as 1/√n. */

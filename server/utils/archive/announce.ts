@@ -56,7 +56,7 @@ async function columnsOf(trx: Db, actor: Actor, body: Announcement) {
   const focal = result.facts.focalLengthMm ?? instrument?.focal_length_mm ?? null
   return {
     target_id: await targetOf(trx, actor.clubId, body.targetName, result.kind), instrument_id: body.instrumentId, recipe_version_id: body.recipeVersionId, replaces_run_id: body.replacesRunId,
-    night: body.night, note: body.note, result: JSON.stringify(result), keep_fraction: result.keep.fraction, keep_count: result.keep.count, frames: result.facts.frameCount,
+    night: body.night, note: body.note, result: JSON.stringify(result), measure: result.measure ? JSON.stringify(result.measure) : null, keep_fraction: result.keep.fraction, keep_count: result.keep.count, frames: result.facts.frameCount,
     fwhm_px: result.figures.fwhmPx, fwhm_err_px: result.figures.fwhmErrPx, scale_arcsec_per_px: pixel && focal ? ARCSEC_PER_RADIAN_UM_MM * pixel / focal : null, kind: result.kind,
   }
 }

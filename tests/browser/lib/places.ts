@@ -33,6 +33,7 @@ export async function memberPlaces(page: Page): Promise<Place[]> {
     { name: 'archive, deleted', path: '/archive?state=deleted' },
     { name: 'run', path: `/runs/${run.id}` },
     { name: 'run on the bench', path: `/runs/${run.id}/review` },
+    { name: 'measures', path: '/measures' },
     { name: 'recipes', path: '/recipes' },
     { name: 'recipe', path: `/recipes/${recipes[0]!.id}` },
     { name: 'recipes compared', path: `/recipes/compare?a=${recipes[0]!.id}.1&b=${recipes[1]!.id}.1` },

@@ -149,6 +149,8 @@ const thingRows: AccessRow[] = [
   { method: 'POST', route: '/api/instruments', ask: () => ({ path: '/api/instruments', body: instrument }), expect: signedIn(201) },
   { method: 'PATCH', route: '/api/instruments/:id', ask: ofInstrument(instrument), expect: ownerOnly(200) },
   { method: 'DELETE', route: '/api/instruments/:id', ask: ofInstrument(), expect: ownerOnly(204) },
+  { method: 'GET', route: '/api/measures', ask: () => ({ path: '/api/measures' }), expect: signedIn(200) },
+  { method: 'GET', route: '/api/measures/export', ask: () => ({ path: '/api/measures/export' }), expect: signedIn(200) },
   { method: 'GET', route: '/api/calibrations', ask: () => ({ path: '/api/calibrations' }), expect: signedIn(200) },
   { method: 'POST', route: '/api/calibrations', ask: () => ({ path: '/api/calibrations', body: calibration }), expect: signedIn(201) },
   { method: 'DELETE', route: '/api/calibrations/:id', ask: async (world: World) => ({ path: `/api/calibrations/${await makeCalibration(world)}` }), expect: ownerOnly(204) },
