@@ -9,7 +9,7 @@ import type { Evidence } from '../shared/schemas/evidence'
 import type { Recipe, ScoreMeasure } from '../shared/schemas/recipe'
 import type { RestoreMethod, RestorePlan } from '../shared/schemas/restoration'
 import type { MeasureRequest, MeasureResult } from '../shared/schemas/measure'
-import type { ColourShifts, DisplayStretch, LadderInfo, Provenance, RunResult, SetAsideReason, StackFigures } from '../shared/schemas/run'
+import type { ColourShifts, DisplayStretch, FieldFigures, LadderInfo, Provenance, RunResult, SetAsideReason, StackFigures } from '../shared/schemas/run'
 
 /** A capture to open: files picked by the user (one file, or the files of a folder in any order), or a demo. */
 export type CaptureInput =
@@ -27,7 +27,7 @@ export interface CaptureProblem {
 
 export type OpenAnswer = { ok: true, facts: CaptureFacts, resumable: boolean } | { ok: false, problem: CaptureProblem }
 
-export type Pass = 'open' | 'survey' | 'grade' | 'refine' | 'ladder' | 'proofs'
+export type Pass = 'open' | 'survey' | 'grade' | 'refine' | 'patches' | 'ladder' | 'proofs'
 
 /** Progress of a pass; at most ten a second. */
 export interface PassProgress { pass: Pass, round: number, done: number, total: number, framesPerSecond: number, secondsLeft: number | null }
@@ -59,6 +59,8 @@ export type RunEvent =
   | { kind: 'frames', columns: FrameColumns, complete: boolean }
   | { kind: 'preview', image: StackImage }
   | { kind: 'ranked', ranked: number, setAside: Partial<Record<SetAsideReason, number>> }
+  /** What the patches of an extended target say about its air. */
+  | { kind: 'field', figures: FieldFigures }
   | { kind: 'ladder', ladder: LadderInfo }
   | { kind: 'proof', fraction: number | 'average', image: StackImage, figures: StackFigures }
   /** A pass that was computed (not taken from memory or the browser's store). Times in ms since the Unix epoch. */

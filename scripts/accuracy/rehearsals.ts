@@ -12,6 +12,9 @@ import type { KnownCapture } from './truth'
 
 function specs(): { spec: RehearsalSpec, scene: KnownCapture['scene'] }[] {
   const double = demoScene('double')
+  const terrain = demoScene('terrain')
+  // Half of the turbulence lies at a height, so that the air differs over the field.
+  const layers = [{ share: 0.4, speedMPerS: 5, directionDeg: 31.7 }, { share: 0.6, speedMPerS: 9, directionDeg: 112.5, heightM: 4000 }]
   return [
     { spec: { ...double, frames: 600 }, scene: 'stars' },
     { spec: { ...demoScene('triple'), frames: 600 }, scene: 'stars' },
@@ -28,6 +31,7 @@ function specs(): { spec: RehearsalSpec, scene: KnownCapture['scene'] }[] {
     { spec: { ...demoScene('planet'), name: 'planet in grey', seed: 31, frames: 200, air: { ...demoScene('planet').air, apertureOverR0: 5 }, detector: { ...demoScene('planet').detector, mosaic: 'none' } }, scene: 'planet' },
     { spec: { ...demoScene('terrain'), frames: 120 }, scene: 'terrain' },
     { spec: { ...demoScene('terrain'), name: 'patch in calm air', seed: 32, frames: 120, air: { ...demoScene('terrain').air, apertureOverR0: 2.2 } }, scene: 'terrain' },
+    ...[33, 34, 35].map(seed => ({ spec: { ...terrain, name: `patch through air that differs over the field, ${seed}`, seed, frames: 80, air: { ...terrain.air, layers } }, scene: 'terrain' as const })),
   ]
 }
 

@@ -9,7 +9,7 @@ type AnyRecipe = Record<string, unknown>
  * old recipe gives the same result as before.
  */
 const addedInVersion2: Record<string, AnyRecipe> = {
-  register: { alignColours: false },
+  register: { patches: 'never', patchPlaces: null, alignColours: false },
   restore: { gainBy: 'hand', psf: 'capture', psfCore: 0.3, psfHaloPx: 16, psfReference: null, iterations: 30, stop: 'noise', snr: null },
 }
 

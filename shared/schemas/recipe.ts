@@ -10,6 +10,7 @@ export const RECIPE_VERSION = 2
 /** transfer: how much of the reference's detail a frame carries; known after registration, for extended targets. */
 export const scoreMeasures = ['laplacian', 'peak', 'transfer'] as const
 export const registerMethods = ['correlation', 'speckle', 'centroid'] as const
+export const patchUses = ['auto', 'always', 'never'] as const
 export const combineMethods = ['mean'] as const
 export const resampleKernels = ['cubic6', 'cubic', 'bilinear', 'nearest'] as const
 export const windowSizes = [32, 64, 128, 256, 512] as const
@@ -36,6 +37,13 @@ export const recipeSchema = z.object({
     referenceFraction: z.number().min(0.001).max(1),
     /** How often the reference is remade from registered frames. */
     refineRounds: z.number().int().min(0).max(3),
+    /**
+     * Register and rank parts of an extended target by themselves: where the air is seen to differ over the field, always, or never.
+     * Without effect on stars.
+     */
+    patches: z.enum(patchUses),
+    /** Middles of the patches, px of the stack (x right, y down); null places them where there is structure. */
+    patchPlaces: z.array(z.object({ x: z.number(), y: z.number() }).strict()).min(6).max(96).nullable(),
     /** Lay the red and blue planes of colour stacks on the green one; without effect on grey captures. */
     alignColours: z.boolean(),
   }).strict(),
@@ -97,7 +105,7 @@ export const defaultRecipe: Recipe = {
   version: RECIPE_VERSION,
   prepare: { repairHotPixels: true },
   score: { rankBy: null, blurPx: null },
-  register: { method: 'correlation', windowPx: null, centre: null, referenceFraction: 0.05, refineRounds: 2, alignColours: true },
+  register: { method: 'correlation', windowPx: null, centre: null, referenceFraction: 0.05, refineRounds: 2, patches: 'auto', patchPlaces: null, alignColours: true },
   keep: { fraction: 0.1 },
   combine: { method: 'mean', kernel: 'cubic6' },
   restore: {

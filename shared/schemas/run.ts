@@ -56,6 +56,19 @@ export const displayStretchSchema = z.object({
   gamma: z.number().min(0.1).max(10),
 })
 
+/** What the patches of an extended target say about its air. */
+export const fieldFiguresSchema = z.object({
+  /** Whether the stack is made of tiles with shifts and rankings of their own. */
+  used: z.boolean(),
+  windowPx: z.number().positive(),
+  /** Middles of the patches, px of the stack. */
+  places: z.array(z.object({ x: z.number(), y: z.number() })),
+  /** How far the air moves parts of the field against each other, px rms, its standard error, and the distance over which it stays alike. */
+  differsPx: z.number().nonnegative(),
+  differsErrPx: z.number().nonnegative(),
+  alikePx: z.number().nonnegative(),
+})
+
 /** Added to the places of a colour plane to land on green, px. */
 const planeShiftSchema = z.object({ dx: z.number(), dy: z.number() })
 /** null where a plane shares too little detail with green to be registered on it. */
@@ -86,6 +99,8 @@ export const runResultSchema = z.object({
   proofs: z.array(stackFiguresSchema),
   average: stackFiguresSchema,
   ladder: ladderInfoSchema,
+  /** What the patches said; absent where there were none. */
+  field: fieldFiguresSchema.optional(),
   /** How the colour planes lay; absent for grey stacks, and where the recipe leaves the colours as they are. */
   colours: colourShiftsSchema.optional(),
   stretch: displayStretchSchema,
@@ -101,6 +116,7 @@ export const runResultSchema = z.object({
 })
 
 export type StackFigures = z.infer<typeof stackFiguresSchema>
+export type FieldFigures = z.infer<typeof fieldFiguresSchema>
 export type ColourShifts = z.infer<typeof colourShiftsSchema>
 export type LadderInfo = z.infer<typeof ladderInfoSchema>
 export type DisplayStretch = z.infer<typeof displayStretchSchema>

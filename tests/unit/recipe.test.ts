@@ -26,7 +26,7 @@ describe('the paragraph', () => {
   it('reads as sentences', () => {
     expect(recipeText(defaultRecipe, { rankBy: 'peak', blurPx: 1, windowPx: 64, kind: 'star' })).toBe(
       'Repair hot pixels and score each frame by its peak intensity after a blur of 1.0 px. Register in a window of 64 px by cross-correlation, '
-      + 'against the best 5 %, refined twice, and lay the colours on each other. Keep the best 10 %, and combine them by their mean with six-point cubic resampling. Restore nothing.')
+      + 'against the best 5 %, refined twice; let parts of the field follow their own air where it differs, and lay the colours on each other. Keep the best 10 %, and combine them by their mean with six-point cubic resampling. Restore nothing.')
   })
   it('marks only what differs', () => {
     const after = withRecipeValue(withRecipeValue(defaultRecipe, 'keep.fraction', 0.02), 'restore.method', 'wiener')

@@ -40,8 +40,8 @@ const band = ({ low, high }: { low: number, high: number }, f2: number): number 
   return rise * rise * steadyExp(-4 * Math.PI * Math.PI * high * high * f2)
 }
 
-export function extendedRegistrar(plan: RegisterPlan): Registrar {
-  const { windowPx: n, reference, refX, refY } = plan
+/** Working memory for windows of a size; registrars of the same size may share it, because each call leaves nothing behind. */
+export function extendedWorkspace(n: number) {
   let cut = Math.max(2, n >> 3)
   // In large windows frequencies beyond a quarter of the sampling are left out: the band leaves a tenth of them, and the
   // transforms cost a third.
@@ -52,12 +52,17 @@ export function extendedRegistrar(plan: RegisterPlan): Registrar {
   const length = spectrumLength(cut)
   const spectrum = new Float64Array(length)
   const product = new Float64Array(length)
-  const broad = new Float64Array(length)
-  const sharp = new Float64Array(length)
   const window = new Float32Array(n * n)
   const { side } = inverse
   const map = new Float32Array(side * side)
-  const step = n / side
+  return { cut, forward, inverse, length, spectrum, product, window, side, map, step: n / side, refine: createNewton(cut, n) }
+}
+
+export function extendedRegistrar(plan: RegisterPlan, workspace = extendedWorkspace(plan.windowPx)): Registrar {
+  const { windowPx: n, reference, refX, refY } = plan
+  const { cut, forward, inverse, length, spectrum, product, window, side, map, step, refine } = workspace
+  const broad = new Float64Array(length)
+  const sharp = new Float64Array(length)
   const load = createLoader(plan)
   const broadBand = plan.form === 'disc' ? BROAD.disc : BROAD.field
 
@@ -98,8 +103,7 @@ export function extendedRegistrar(plan: RegisterPlan): Registrar {
   for (let kx = 0, o = 0; kx <= cut; kx++) for (let ky = -cut; ky <= cut; ky++, o += 2) own += (kx === 0 ? 1 : 2) * product[o]!
   own /= n * n
   const noiseLevel = plan.noise * Math.sqrt(broadPower) / n
-  const radius = n / 2 - Math.max(4, n / 16)
-  const refine = createNewton(cut, n)
+  const radius = Math.min(plan.reachPx ?? Infinity, n / 2 - Math.max(4, n / 16))
   const first: Maximum = { x: 0, y: 0, value: 0 }
   const second: Maximum = { x: 0, y: 0, value: 0 }
 

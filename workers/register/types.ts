@@ -39,4 +39,6 @@ export interface RegisterPlan {
   /** Place of the target in the reference, px. */
   refX: number
   refY: number
+  /** How far from the expected place the target is looked for, px; absent: as far as the window allows. */
+  reachPx?: number
 }

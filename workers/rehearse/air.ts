@@ -7,8 +7,8 @@ import { createScreens, lowPhaseAt, type LowPhase } from './screen'
 export interface Air {
   /** D/r0 at a time, s. */
   strength(seconds: number): number
-  /** Phase at the pupil's points, rad at the wavelength of the optics × `colour` (reference over own wavelength); piston is arbitrary. */
-  phase(seconds: number, pupil: Pupil, colour: number, out: Float64Array): void
+  /** Phase at the pupil's points, rad at the wavelength of the optics × `colour` (reference over own wavelength); piston is arbitrary. `towards`: angle from the middle of the field, rad. */
+  phase(seconds: number, pupil: Pupil, colour: number, out: Float64Array, towards?: { x: number, y: number }): void
 }
 
 /** Catmull-Rom weights for a fraction 0-1. */
@@ -30,7 +30,7 @@ export function createAir(air: RehearsalSpec['air'], apertureM: number, seed: nu
     const { share, speedMPerS, directionDeg } = air.layers[i]!
     const angle = directionDeg * Math.PI / 180
     const speed = speedMPerS / apertureM * diameter
-    return { screen, gain: Math.sqrt(share / shares), x: size * random.uniform(), y: size * random.uniform(), vx: -speed * Math.cos(angle), vy: -speed * Math.sin(angle) }
+    return { screen, gain: Math.sqrt(share / shares), x: size * random.uniform(), y: size * random.uniform(), vx: -speed * Math.cos(angle), vy: -speed * Math.sin(angle), lever: (air.layers[i]!.heightM ?? 0) / apertureM * diameter }
   })
   const swings = [1, 1.7, 3.1, 5.3].map((faster, i) => ({ rate: 2 * Math.PI * faster / air.gusts.periodS, phase: 2 * Math.PI * random.uniform(), share: [0.4, 0.28, 0.19, 0.13][i]! }))
   const strength = (seconds: number) => {
@@ -43,13 +43,13 @@ export function createAir(air: RehearsalSpec['air'], apertureM: number, seed: nu
   const wy = new Float64Array(4)
   const low: LowPhase = { x: 0, y: 0, xx: 0, xy: 0, yy: 0 }
 
-  const phase: Air['phase'] = (seconds, pupil, colour, out) => {
+  const phase: Air['phase'] = (seconds, pupil, colour, out, towards) => {
     out.fill(0)
     low.x = low.y = low.xx = low.xy = low.yy = 0
     const scale = colour * strength(seconds) ** (5 / 6)
     for (const layer of layers) {
-      const left = Math.round(layer.x + layer.vx * seconds)
-      const top = Math.round(layer.y + layer.vy * seconds)
+      const left = Math.round(layer.x + layer.vx * seconds + layer.lever * (towards?.x ?? 0))
+      const top = Math.round(layer.y + layer.vy * seconds + layer.lever * (towards?.y ?? 0))
       const gain = scale * layer.gain
       const grid = layer.screen.phase
       lowPhaseAt(layer.screen, left / diameter, top / diameter, gain, low)

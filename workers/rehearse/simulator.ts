@@ -8,6 +8,7 @@ import { createCourse } from './motion'
 import { createDetector, mosaicPlanes } from './detector'
 import { createPsfMaker, createPupil, psfPeak } from './pupil'
 import { createSquareTransform, type Rows } from './fft2'
+import { fieldNodes, type FieldNode } from './field'
 import { rehearsalGeometry } from './geometry'
 import { sceneTransfer } from './scene'
 
@@ -22,6 +23,7 @@ export interface Simulator {
   render(frame: number, out: Samples, offset: number): FrameTruth
 }
 
+/** psfs: one for each node of the field and colour, nodes × colours. */
 interface Exposure { frame: number, psfs: Float64Array[], truth: FrameTruth, shiftX: number, shiftY: number }
 
 export function createSimulator(given: RehearsalSpec): Simulator {
@@ -50,6 +52,7 @@ export function createSimulator(given: RehearsalSpec): Simulator {
       band: Math.min(canvasSize / 2, Math.ceil(canvasSize * ratio / lambdaOverDPx) + 2),
     }
   })
+  const nodes = fieldNodes(spec)
   const judged = colours.length === 3 ? 1 : 0
   const planeOf = mosaic === 'none' ? null : mosaicPlanes(mosaic, spec.width, spec.height)
   // An even number of fine pixels has its middle between two of them.
@@ -68,17 +71,17 @@ export function createSimulator(given: RehearsalSpec): Simulator {
     const slopeX = 2 * Math.PI * (fineX - shiftX) / psfSize
     const slopeY = 2 * Math.PI * (fineY - shiftY) / psfSize
     const start = course.seconds[frame]!
-    const psfs = colours.map(({ ratio, pupil, maker, phase, raisedX, raisedY }) => {
+    const psfs = nodes.flatMap(node => colours.map(({ ratio, pupil, maker, phase, raisedX, raisedY }) => {
       const psf = new Float64Array(psfSize * psfSize)
       const gain = 1 / (spec.subSteps * pupil.power * psfSize * psfSize)
       for (let step = 0; step < spec.subSteps; step++) {
-        air.phase(start + spec.exposureMs / 1000 * (step + 0.5) / spec.subSteps, pupil, ratio, phase)
+        air.phase(start + spec.exposureMs / 1000 * (step + 0.5) / spec.subSteps, pupil, ratio, phase, node.towards)
         for (let i = 0; i < phase.length; i++) phase[i]! += pupil.x[i]! * (slopeX + 2 * Math.PI * raisedX / psfSize) + pupil.y[i]! * (slopeY + 2 * Math.PI * raisedY / psfSize)
         maker.add(phase, gain, psf)
       }
       return psf
-    })
-    const peak = psfPeak(psfs[judged]!, psfSize)
+    }))
+    const peak = psfPeak(psfs[(nodes.length >> 1) * colours.length + judged]!, psfSize)
     return {
       frame, psfs, shiftX, shiftY,
       truth: {
@@ -91,8 +94,7 @@ export function createSimulator(given: RehearsalSpec): Simulator {
   }
 
   /** Lays a point-spread function into the canvas, moved by whole pixels; what would leave the canvas is lost. */
-  function lay(exposure: Exposure, colour: number, part: 0 | 1): void {
-    const psf = exposure.psfs[colour]!
+  function lay(exposure: Exposure, psf: Float64Array, part: 0 | 1): void {
     const gain = exposure.truth.transparency
     const half = canvasSize / 2
     for (let row = 0; row < psfSize; row++) {
@@ -108,18 +110,19 @@ export function createSimulator(given: RehearsalSpec): Simulator {
   }
 
   /** Reads the frame's pixels of one colour out of the canvas, binned. */
-  function gather(image: Float64Array, part: 0 | 1, colour: number): void {
+  function gather(image: Float64Array, part: 0 | 1, colour: number, { across, down }: FieldNode): void {
     const mask = canvasSize - 1
     const first = -((oversample - 1) >> 1)
     for (let y = 0, at = 0; y < spec.height; y++) {
       for (let x = 0; x < spec.width; x++, at++) {
-        if (planeOf && planeOf[at] !== colour) continue
+        const weight = across[x]! * down[y]!
+        if (weight === 0 || (planeOf && planeOf[at] !== colour)) continue
         let sum = 0
         for (let j = 0; j < oversample; j++) {
           const row = (((y - geometry.middleY) * oversample + first + j) & mask) * canvasSize
           for (let i = 0; i < oversample; i++) sum += work[2 * (row + (((x - geometry.middleX) * oversample + first + i) & mask)) + part]!
         }
-        image[at] = sum
+        image[at]! += weight * sum
       }
     }
   }
@@ -154,17 +157,16 @@ export function createSimulator(given: RehearsalSpec): Simulator {
   function renderPair(first: number): FrameTruth[] {
     if (pair?.first === first) return pair.truths
     const exposures = [expose(first), expose(Math.min(first + 1, spec.frames - 1))]
-    for (let colour = 0; colour < colours.length; colour++) {
+    for (const image of images) image.fill(0)
+    nodes.forEach((node, k) => colours.forEach(({ band }, colour) => {
       work.fill(0)
-      lay(exposures[0]!, colour, 0)
-      lay(exposures[1]!, colour, 1)
-      const { band } = colours[colour]!
+      exposures.forEach((exposure, part) => lay(exposure, exposure.psfs[k * colours.length + colour]!, part as 0 | 1))
       canvas.forward(work, rowsOf(exposures), band)
       multiply(transfer.planes[Math.min(colour, transfer.planes.length - 1)]!, band)
       canvas.inverse(work, frameRows, band)
-      gather(images[0]!, 0, colour)
-      gather(images[1]!, 1, colour)
-    }
+      gather(images[0]!, 0, colour, node)
+      gather(images[1]!, 1, colour, node)
+    }))
     pair = { first, truths: exposures.map(exposure => exposure.truth) }
     return pair.truths
   }

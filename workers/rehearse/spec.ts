@@ -4,8 +4,9 @@
  *
  * Modelled: Kolmogorov or von Kármán phase in frozen flow of up to four layers, slow changes of its strength, finite
  * exposure, circular pupil with central obstruction, pixel integration, drift, shake, jumps, cloud, dropped frames,
- * photon and read noise, bias, hot pixels, dispersion between colours, colour-filter mosaics, clipping and quantisation.
- * Not modelled: differences of the air across the field, scintillation.
+ * photon and read noise, bias, hot pixels, dispersion between colours, colour-filter mosaics, clipping, quantisation, and
+ * air that differs across the field (layers at a height).
+ * Not modelled: scintillation.
  */
 import { z } from 'zod'
 import { plateScale } from '../../shared/optics'
@@ -62,7 +63,11 @@ export const rehearsalSpecSchema = z.object({
     /** Outer scale, m; null is Kolmogorov's infinite one. */
     outerScaleM: z.number().positive().nullable(),
     /** Shares of the turbulence (normalised to a sum of 1), wind speed, m/s, and direction in the frame, degrees from x towards y. */
-    layers: z.array(z.object({ share: z.number().positive(), speedMPerS: z.number().min(0).max(200), directionDeg: finite }).strict()).min(1).max(4),
+    layers: z.array(z.object({
+      share: z.number().positive(), speedMPerS: z.number().min(0).max(200), directionDeg: finite,
+      /** Distance along the line of sight, m: from there on, parts of the field look through different air. Absent: at the telescope. */
+      heightM: z.number().min(0).max(30_000).optional(),
+    }).strict()).min(1).max(4),
     /** Slow rise and fall of D/r0: relative amplitude (0 is steady) and the time scale of the longest swing, s. */
     gusts: z.object({ amplitude: z.number().min(0).max(0.8), periodS: z.number().positive() }).strict(),
   }).strict(),

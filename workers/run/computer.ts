@@ -5,6 +5,9 @@
  */
 import { makeKernels, type Kernels } from '../kernels/index'
 import { prepareColour, prepareLuminance, prepareRows } from '../prepare/frame'
+import { createPatchRegistrar, type PatchRegistrar } from '../patches/registrar'
+import { createTileAdder, type TileAdder } from '../patches/tiles'
+import type { Mesh } from '../patches/types'
 import type { PreparePlan } from '../prepare/types'
 import { createRegistrar, emptyShift, type Registrar } from '../register/registrar'
 import { createScorer, emptyScore, type Scorer } from '../score/scorer'
@@ -12,18 +15,18 @@ import { addSum, fixedSum, makeRoom, type FixedSum } from '../stack/fixed'
 import type { ResampleKernel } from '../../shared/schemas/recipe'
 import { AverageSum } from './average'
 import { surveyFrames } from './survey-frames'
-import type { Batch, ComputeReply, ComputeRequest, GradeReply, JudgeSetup, ShiftReply } from './messages'
+import type { Batch, ComputeReply, ComputeRequest, GradeReply, JudgeSetup, PatchReply, ShiftReply } from './messages'
 
 type Of<Op extends ComputeRequest['op']> = Extract<ComputeRequest, { op: Op }>
 
 /** What is needed to add prepared frames to sums. */
-export interface Adder { plan: PreparePlan, planes: 1 | 3, scale: number, kernel: ResampleKernel, kernels: Kernels, frame: Float32Array }
+export interface Adder { mesh?: Mesh | null, plan: PreparePlan, planes: 1 | 3, scale: number, kernel: ResampleKernel, kernels: Kernels, frame: Float32Array, tiles: TileAdder | null }
 
 /** An adder with memory for `sums` 32-bit sums; they are made with its kernels. */
-export function makeAdder(how: Omit<Adder, 'kernels' | 'frame'>, sums: number): Adder {
+export function makeAdder(how: Omit<Adder, 'kernels' | 'frame' | 'tiles'>, sums: number): Adder {
   const samples = how.plan.width * how.plan.height * how.planes
   const kernels = makeKernels((sums + 1) * (samples * 4 + 128), how.plan.width, how.plan.width * how.plan.height * how.plan.planes)
-  return { ...how, kernels, frame: kernels.floats(samples) }
+  return { ...how, kernels, frame: kernels.floats(samples), tiles: how.mesh ? createTileAdder(how.mesh) : null }
 }
 
 /** Bits of the flags column. */
@@ -35,6 +38,7 @@ export class Computer {
   #setup: JudgeSetup | null = null
   #scorer: Scorer | null = null
   #registrar: Registrar | null = null
+  #patches: PatchRegistrar | null = null
   #kernels: Kernels | null = null
   #luminance: Float32Array = new Float32Array(0)
   #score = emptyScore()
@@ -52,8 +56,10 @@ export class Computer {
       case 'setup': return this.#begin(request.setup)
       case 'grade': return this.#grade(request)
       case 'register': return this.#register(request)
+      case 'patches': return this.#registerPatches(request)
       case 'sums': return this.#openSums(request)
       case 'add': return this.#add(request)
+      case 'add-tiles': return this.#addTiles(request)
       case 'take': return { sums: request.slots.map(slot => this.#take(slot)) }
       case 'peek': return { sums: request.slots.map(slot => this.#peek(slot)) }
       case 'put': return this.#put(request.slot, request.sum)
@@ -71,6 +77,7 @@ export class Computer {
     this.#average = null
     this.#scorer = setup.score && createScorer(setup.score)
     this.#registrar = setup.register && createRegistrar(setup.register)
+    this.#patches = setup.patches ? createPatchRegistrar(setup.patches) : null
     return null
   }
 
@@ -115,6 +122,19 @@ export class Computer {
     return reply
   }
 
+  #registerPatches({ batch, picks, dx, dy }: Of<'patches'>): PatchReply {
+    const places = this.#setup!.patches!.places.length
+    const column = () => new Float32Array(picks.length * places)
+    const reply: PatchReply = { dx: column(), dy: column(), transfer: column() }
+    const plan = this.#setup!.prepare
+    const stride = plan.width * plan.height * plan.planes
+    for (let i = 0; i < picks.length; i++) {
+      prepareLuminance(batch.samples, batch.offset + picks[i]! * stride, plan, this.#luminance, this.#kernels!.convert)
+      this.#patches!.register(this.#luminance, dx[i]!, dy[i]!, reply, i * places)
+    }
+    return reply
+  }
+
   #shiftInto(reply: ShiftReply, i: number, x: number, y: number): void {
     this.#registrar!.register(this.#luminance, x, y, this.#shift)
     reply.dx[i] = this.#shift.dx
@@ -124,8 +144,8 @@ export class Computer {
     reply.sure[i] = this.#shift.sure ? 1 : 0
   }
 
-  #openSums({ plan, slots, planes, scale, kernel }: Of<'sums'>): null {
-    this.#sums = { adder: makeAdder({ plan, planes, scale, kernel }, slots), slots: new Array<FixedSum | null>(slots).fill(null) }
+  #openSums({ plan, slots, planes, scale, kernel, mesh }: Of<'sums'>): null {
+    this.#sums = { adder: makeAdder({ plan, planes, scale, kernel, mesh }, slots), slots: new Array<FixedSum | null>(slots).fill(null) }
     return null
   }
 
@@ -135,6 +155,22 @@ export class Computer {
       const sum = slots[slot[i]!] ??= fixedSum(adder.kernels.ints(adder.frame.length))
       makeRoom(sum)
       addFrame(adder, batch, picks[i]!, dx[i]!, dy[i]!, 1, sum.small)
+    }
+    return null
+  }
+
+  #addTiles({ batch, picks, tiles, tile, slot, dx, dy }: Of<'add-tiles'>): null {
+    const { adder, slots } = this.#sums!
+    for (let i = 0, k = 0; i < picks.length; i++) {
+      prepareForAdding(adder, batch, picks[i]!)
+      const touched = new Set<FixedSum>()
+      for (const end = k + tiles[i]!; k < end; k++) {
+        const sum = slots[slot[k]!] ??= fixedSum(adder.kernels.ints(adder.frame.length))
+        // Tiles of one frame in one sum overlap in no pixel with more than the weight of one frame.
+        if (!touched.has(sum)) makeRoom(sum)
+        touched.add(sum)
+        addTile(adder, tile[k]!, dx[k]!, dy[k]!, 1, sum.small)
+      }
     }
     return null
   }
@@ -168,6 +204,7 @@ export class Computer {
     this.#sums = null
     this.#scorer = null
     this.#registrar = null
+    this.#patches = null
     return null
   }
 
@@ -177,11 +214,10 @@ export class Computer {
 }
 
 /** Prepares frame `pick` of a batch and adds it, shifted, to a sum of planes that the adder's kernels made. */
-export function addFrame({ plan, planes, scale, kernel, kernels, frame }: Adder, batch: Batch, pick: number, dx: number, dy: number, sign: 1 | -1, sum: Int32Array): void {
+export function addFrame(adder: Adder, batch: Batch, pick: number, dx: number, dy: number, sign: 1 | -1, sum: Int32Array): void {
+  prepareForAdding(adder, batch, pick)
+  const { plan, planes, scale, kernel, kernels, frame } = adder
   const size = plan.width * plan.height
-  const offset = batch.offset + pick * size * plan.planes
-  if (planes === 1) prepareLuminance(batch.samples, offset, plan, frame, kernels.convert)
-  else prepareColour(batch.samples, offset, plan, frame, kernels.convert)
   for (let plane = 0; plane < planes; plane++) {
     kernels.addShifted(frame.subarray(plane * size, (plane + 1) * size), plan.width, plan.height, dx, dy, kernel, scale, sign,
       sum.subarray(plane * size, (plane + 1) * size))
@@ -190,4 +226,19 @@ export function addFrame({ plan, planes, scale, kernel, kernels, frame }: Adder,
 
 function shiftReply(n: number): ShiftReply {
   return { dx: new Float64Array(n), dy: new Float64Array(n), confidence: new Float64Array(n), transfer: new Float64Array(n), sure: new Uint8Array(n) }
+}
+
+/** Prepares frame `pick` of a batch in the adder's own plane memory. */
+export function prepareForAdding({ plan, planes, kernels, frame }: Adder, batch: Batch, pick: number): void {
+  const offset = batch.offset + pick * plan.width * plan.height * plan.planes
+  if (planes === 1) prepareLuminance(batch.samples, offset, plan, frame, kernels.convert)
+  else prepareColour(batch.samples, offset, plan, frame, kernels.convert)
+}
+
+/** Adds one tile of the frame that was prepared last, shifted, to a sum of planes. */
+export function addTile({ plan, planes, scale, kernel, frame, tiles }: Adder, tile: number, dx: number, dy: number, sign: 1 | -1, sum: Int32Array): void {
+  const size = plan.width * plan.height
+  for (let plane = 0; plane < planes; plane++) {
+    tiles!.add(frame.subarray(plane * size, (plane + 1) * size), tile, dx, dy, kernel, scale, sign, sum.subarray(plane * size, (plane + 1) * size))
+  }
 }

@@ -20,6 +20,8 @@ import { Figurer } from './figures'
 import { FrameStore, type FrameStoreOptions } from './frames'
 import { gradePass, type Graded, type GradeProgress } from './grade-pass'
 import { stageKeys, type StageKeys } from './keys'
+import { noPatches, patchPass, type Patched } from './patch-pass'
+import { tileOrder } from './tile-order'
 import { ladderPass, type Ladder } from './ladder-pass'
 import { LadderKeeper } from './ladder-resume'
 import { breathe, type Pool } from './pool'
@@ -51,6 +53,7 @@ export interface RunState {
   surveyed: Surveyed
   graded: Graded
   refined: Refined
+  patched: Patched
   ranking: Ranking
   ladder: Ladder
   stacker: Stacker
@@ -107,16 +110,22 @@ export class Engine {
     emit({ kind: 'frames', columns: frameColumns(graded.table, refined.shifts, ranking.rank, by, seconds), complete: true })
     emit({ kind: 'ranked', ranked: ranking.order.length, setAside: countSetAside(refined.shifts.setAside) })
 
+    const patched = surveyed.survey.kind === 'star' || recipe.register.patches === 'never'
+      ? noPatches
+      : await this.#stage('patches', keys.patches, () => patchPass(context, surveyed, refined, recipe))
+    if (patched.figures) emit({ kind: 'field', figures: patched.figures })
+    const tiles = patched.field ? tileOrder(patched.field, scoreColumn(graded.table, refined.shifts, by), refined.shifts.setAside) : null
+
     const ladder = await this.#stage('ladder', keys.ladder, () => ladderPass(context, surveyed, refined.shifts, ranking, recipe.combine.kernel, {
-      keeper: this.#stages.keeps ? new LadderKeeper(this.#stages, keys.ladder) : null, checkpointMs: 2 * this.#checkpointMs,
+      tiles, keeper: this.#stages.keeps ? new LadderKeeper(this.#stages, keys.ladder) : null, checkpointMs: 2 * this.#checkpointMs,
     }))
     const same = this.#state?.ladder === ladder && this.#state.recipe.register.alignColours === recipe.register.alignColours ? this.#state : null
-    const stacker = same?.stacker ?? new Stacker(ladder, ranking.order, refined.shifts, this.frames, surveyed.plan)
+    const stacker = same?.stacker ?? new Stacker(ladder, ranking.order, refined.shifts, this.frames, surveyed.plan, tiles)
     if (!same && recipe.register.alignColours) await layColours(stacker, ladder, surveyed, refined.reference)
     const unchanged = same !== null && canonicalJson(same.optics) === canonicalJson(optics)
     const figurer = unchanged ? same.figurer : new Figurer({ stacker, ladder, order: ranking.order, peak: graded.table.peak, surveyed, optics })
     const restorer = unchanged ? same.restorer : new Restorer({ stacker, ladder, surveyed, optics, shifts: refined.shifts })
-    this.#state = { recipe, measure: by, optics, keys, surveyed, graded, refined, ranking, ladder, stacker, figurer, restorer, proofs: unchanged ? same.proofs : null, evidence: unchanged ? same.evidence : null }
+    this.#state = { recipe, measure: by, optics, keys, surveyed, graded, refined, patched, ranking, ladder, stacker, figurer, restorer, proofs: unchanged ? same.proofs : null, evidence: unchanged ? same.evidence : null }
     const { counts, width, height, planes } = ladder
     if (counts.length > 0) emit({ kind: 'ladder', ladder: { counts, width, height, planes } })
     const state = this.#state

@@ -8,10 +8,10 @@ import type { Recipe } from '../../shared/schemas/recipe'
  * The ranking measure does not reach the shifts: the reference is chosen by a measure that fits the target,
  * so that a change of the ranking never registers again.
  */
-export interface StageKeys { survey: string, grade: string, refine: string, ladder: string }
+export interface StageKeys { survey: string, grade: string, refine: string, patches: string, ladder: string }
 
 /** Raise when the arithmetic of any stage changes, so that nothing stale is taken from a browser's store. */
-const CORE_VERSION = 5
+const CORE_VERSION = 6
 
 export async function stageKeys(facts: CaptureFacts, recipe: Recipe): Promise<StageKeys> {
   const { register } = recipe
@@ -23,7 +23,8 @@ export async function stageKeys(facts: CaptureFacts, recipe: Recipe): Promise<St
   const refined = register.refineRounds > 0
   const grade = { ...survey, method: refined ? null : register.method }
   const refine = { ...grade, method: register.method, referenceFraction: refined ? register.referenceFraction : null, rounds: register.refineRounds }
-  const ladder = { ...refine, rankBy: recipe.score.rankBy, kernel: recipe.combine.kernel }
-  const [a, b, c, d] = await Promise.all([survey, grade, refine, ladder].map((inputs, stage) => recipeHash({ stage, ...inputs })))
-  return { survey: a!, grade: b!, refine: c!, ladder: d! }
+  const patches = { ...refine, patches: register.patches, patchPlaces: register.patchPlaces }
+  const ladder = { ...patches, rankBy: recipe.score.rankBy, kernel: recipe.combine.kernel }
+  const [a, b, c, d, e] = await Promise.all([survey, grade, refine, patches, ladder].map((inputs, stage) => recipeHash({ stage, ...inputs })))
+  return { survey: a!, grade: b!, refine: c!, patches: d!, ladder: e! }
 }

@@ -5,7 +5,9 @@ import { outPlanes } from '../prepare/frame'
 import type { ShiftTable } from './columns'
 import { toAll, type PassContext } from './context'
 import { Feed } from './feed'
-import { picked, pieces } from './picked'
+import { picked, pieces, type Picked } from './picked'
+import { tileCount } from '../patches/mesh'
+import { tileShift, type TileOrder } from './tile-order'
 import type { LadderKeeper } from './ladder-resume'
 import type { Ranking } from './rank'
 import type { Surveyed } from './survey-frames'
@@ -32,7 +34,7 @@ export function mostRungs(samples: number, bytes = LADDER_BYTES): number {
   return Math.max(1, Math.min(60, Math.floor(bytes / (samples * SAMPLE_BYTES))))
 }
 
-export interface LadderOptions { keeper: LadderKeeper | null, checkpointMs: number }
+export interface LadderOptions { tiles?: TileOrder | null, keeper: LadderKeeper | null, checkpointMs: number }
 
 /** Adds every ranked frame, shifted, to the sum of its rung; then makes the sums cumulative. */
 export async function ladderPass(context: PassContext, surveyed: Surveyed, shifts: ShiftTable, ranking: Ranking, kernel: ResampleKernel, options: LadderOptions): Promise<Ladder> {
@@ -44,7 +46,7 @@ export async function ladderPass(context: PassContext, surveyed: Surveyed, shift
   // Each worker numbers its own rungs; a rung has two slots, for odd and even ranks.
   const owned = new Array<number>(pool.size).fill(0)
   const local = owner.map(worker => owned[worker]!++)
-  const openSums = () => toAll(pool, worker => pool.call(worker, { op: 'sums', plan, slots: owned[worker]! * 2, planes, scale, kernel }))
+  const openSums = () => toAll(pool, worker => pool.call(worker, { op: 'sums', plan, slots: owned[worker]! * 2, planes, scale, kernel, mesh: options.tiles?.field.mesh ?? null }))
   await openSums()
   const feed = new Feed(pool, signal)
   const rungOf = (frame: number) => rungOfRank(counts, ranking.rank[frame]! - 1)
@@ -57,7 +59,14 @@ export async function ladderPass(context: PassContext, surveyed: Surveyed, shift
   progress.begin('ladder', 0, ranking.order.length, ranking.order.length - left.length)
   let savedAt = performance.now()
   for await (const { block, picks } of picked(context, left)) {
-    for (let worker = 0; worker < pool.size; worker++) {
+    for (let worker = 0; options.tiles && worker < pool.size; worker++) {
+      await sendTiles(context, feed, options.tiles, shifts, { block, picks }, worker, (rank) => {
+        const rung = rungOfRank(counts, rank - 1)
+        return owner[rung] === worker ? local[rung]! * 2 + ((rank - 1) & 1) : null
+      })
+      if (worker === 0) progress.add(picks.length)
+    }
+    for (let worker = 0; !options.tiles && worker < pool.size; worker++) {
       const mine = picks.filter(pick => owner[rungOf(block.first + pick)] === worker)
       for (const { piece, part } of pieces(context, { block, picks: mine })) {
         const ids = Array.from(part, pick => piece.batch.first + pick)
@@ -98,5 +107,31 @@ async function cumulate({ pool, signal }: PassContext, ladder: Ladder, owner: nu
     if (odd!.length > 0) addInto(whole, odd!)
     ladder.sums.push(whole.slice())
     ladder.halves.push(Float32Array.from(half))
+  }
+}
+
+/** Sends one worker the tiles of some frames that belong to its rungs. `slotOf`: the slot of a rank, or null where it is another worker's. */
+async function sendTiles(context: PassContext, feed: Feed, { field, ranks }: TileOrder, shifts: ShiftTable, { block, picks }: Picked, worker: number, slotOf: (rank: number) => number | null): Promise<void> {
+  const count = tileCount(field.mesh)
+  const has = (frame: number) => {
+    for (let t = 0; t < count; t++) if (slotOf(ranks[frame * count + t]!) !== null) return true
+    return false
+  }
+  for (const { piece, part } of pieces(context, { block, picks: picks.filter(pick => has(block.first + pick)) })) {
+    const tiles = new Int32Array(part.length)
+    const list: { tile: number, slot: number, dx: number, dy: number }[] = []
+    part.forEach((pick, i) => {
+      const frame = piece.batch.first + pick
+      for (let tile = 0; tile < count; tile++) {
+        const slot = slotOf(ranks[frame * count + tile]!)
+        if (slot === null) continue
+        tiles[i]! += 1
+        list.push({ tile, slot, ...tileShift(field, count, frame, tile, shifts.dx[frame]!, shifts.dy[frame]!) })
+      }
+    })
+    await feed.send(worker, {
+      op: 'add-tiles', batch: piece.batch, picks: part, tiles, tile: Int32Array.from(list, t => t.tile), slot: Int32Array.from(list, t => t.slot),
+      dx: Float64Array.from(list, t => t.dx), dy: Float64Array.from(list, t => t.dy),
+    }, piece.transfer, () => undefined)
   }
 }

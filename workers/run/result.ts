@@ -22,7 +22,7 @@ export async function runResult(engine: Engine, recipe: Recipe, recipeHash: stri
     keep: { fraction: recipe.keep.fraction, count },
     ranked: stacker.ranked, setAside: countSetAside(refined.shifts.setAside),
     figures: figurer.of(image), proofs, average: known.get('average') ?? figurer.ofAverage(engine.averageShown(), graded.table.count),
-    ladder: { counts, width, height, planes }, ...(stacker.colours ? { colours: stacker.colours } : {}),
+    ladder: { counts, width, height, planes }, ...(state.patched.figures ? { field: state.patched.figures } : {}), ...(stacker.colours ? { colours: stacker.colours } : {}),
     stretch: displayRange(image), restoration, ...(withEvidence ? { evidence: await engine.evidence(), starTransfer: await engine.starTransfer(count) } : {}), provenance: engine.provenance(),
   }
 }

@@ -43,7 +43,7 @@ export function boxLuminance(samples: ArrayLike<number>, planes: 1 | 3, width: n
 /** Of one rung, in the box: sums of all frames and of those of even place, and how many of each cover a pixel. */
 export type RungBox = Record<'sum' | 'even' | 'all' | 'half', Float32Array>
 
-export function rungBox({ counts, sums, halves, planes, width, height }: Ladder, rung: number, box: Box, coverage: (count: number, every: 1 | 2) => Int32Array): RungBox {
+export function rungBox({ counts, sums, halves, planes, width, height }: Ladder, rung: number, box: Box, coverage: (count: number, every: 1 | 2) => ArrayLike<number>): RungBox {
   return {
     sum: boxLuminance(sums[rung]!, planes, width, height, box), even: boxLuminance(halves[rung]!, planes, width, height, box),
     all: boxLuminance(coverage(counts[rung]!, 1), 1, width, height, box), half: boxLuminance(coverage(counts[rung]!, 2), 1, width, height, box),

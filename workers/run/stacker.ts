@@ -5,11 +5,17 @@ import type { PreparePlan } from '../prepare/types'
 import { coveredBy, FIXED_FRAMES } from '../stack/accumulate'
 import { coverageCounts, coverageMarks, markCovered } from '../stack/coverage'
 import { addInto } from '../stack/fixed'
-import { fillUncovered, meanOf } from '../stack/mean'
+import { fillUncovered, meanOf, type Counts } from '../stack/mean'
 import type { ShiftTable } from './columns'
-import { addFrame, makeAdder, type Adder } from './computer'
+import { tileCount } from '../patches/mesh'
+import { tileCoverage } from '../patches/tiles'
+import { tileShift, type TileOrder } from './tile-order'
+import { addFrame, addTile, makeAdder, prepareForAdding, type Adder } from './computer'
 import type { FrameStore } from './frames'
 import type { Ladder } from './ladder-pass'
+
+/** Samples that may be prepared while a slider is dragged. */
+const LIGHT_SAMPLES = 4e6
 
 /**
  * Stacks of exactly the best n frames, for any n. It starts from whichever exact sum is nearest, the rung
@@ -24,17 +30,19 @@ export class Stacker {
   readonly #adder: Adder
   readonly #sum: Float64Array
   readonly #small: Int32Array
+  readonly #tiles: TileOrder | null
   #colours: ColourShifts | null = null
   #count = 0
   #queue: Promise<unknown> = Promise.resolve()
 
-  constructor(ladder: Ladder, order: Int32Array, shifts: ShiftTable, frames: FrameStore, plan: PreparePlan) {
+  constructor(ladder: Ladder, order: Int32Array, shifts: ShiftTable, frames: FrameStore, plan: PreparePlan, tiles: TileOrder | null = null) {
     const size = ladder.planes * ladder.width * ladder.height
     this.#ladder = ladder
     this.#order = order
     this.#shifts = shifts
     this.#frames = frames
-    this.#adder = makeAdder({ plan, planes: ladder.planes, scale: ladder.scale, kernel: ladder.kernel }, 1)
+    this.#adder = makeAdder({ plan, planes: ladder.planes, scale: ladder.scale, kernel: ladder.kernel, mesh: tiles?.field.mesh ?? null }, 1)
+    this.#tiles = tiles
     this.#sum = new Float64Array(size)
     this.#small = this.#adder.kernels.ints(size)
   }
@@ -62,12 +70,14 @@ export class Stacker {
   nearAtHand(count: number): number {
     const wanted = Math.max(0, Math.min(this.ranked, Math.round(count)))
     const from = this.#nearest(wanted).count
-    for (let place = Math.min(from, wanted); place < Math.max(from, wanted); place++) {
-      if (!this.#frames.holds(this.#order[place]!)) {
-        return this.#ladder.counts.reduce((best, rung) => Math.abs(rung - wanted) < Math.abs(best - wanted) ? rung : best, this.#ladder.counts[0]!)
-      }
+    const between = new Set<number>()
+    for (const order of this.#tiles?.orders ?? [this.#order]) {
+      for (let place = Math.min(from, wanted); place < Math.max(from, wanted); place++) between.add(order[place]!)
     }
-    return wanted
+    // Tiles of many frames may lie between two stacks: where preparing them all would be felt, a rung is shown instead.
+    const light = !this.#tiles || between.size * this.#small.length < LIGHT_SAMPLES
+    if (light && [...between].every(frame => this.#frames.holds(frame))) return wanted
+    return this.#ladder.counts.reduce((best, rung) => Math.abs(rung - wanted) < Math.abs(best - wanted) ? rung : best, this.#ladder.counts[0]!)
   }
 
   /**
@@ -91,13 +101,25 @@ export class Stacker {
     const { width, height, planes, scale, kernel } = this.#ladder
     const sum = new Float64Array(this.#small.length)
     const marks = coverageMarks(width, height)
+    const tiles = this.#tiles
+    const count = tiles ? tileCount(tiles.field.mesh) : 0
     this.#small.fill(0)
     let room = 0
     for (const frame of frames) {
       signal?.throwIfAborted()
       const [dx, dy] = [this.#shifts.dx[frame]!, this.#shifts.dy[frame]!]
-      addFrame(this.#adder, await this.#frames.frame(frame, signal), 0, dx, dy, 1, this.#small)
-      markCovered(marks, width, coveredBy(kernel, width, height, dx, dy), 1)
+      const batch = await this.#frames.frame(frame, signal)
+      if (tiles) {
+        prepareForAdding(this.#adder, batch, 0)
+        for (let tile = 0; tile < count; tile++) {
+          const shift = tileShift(tiles.field, count, frame, tile, dx, dy)
+          addTile(this.#adder, tile, shift.dx, shift.dy, 1, this.#small)
+        }
+      }
+      else {
+        addFrame(this.#adder, batch, 0, dx, dy, 1, this.#small)
+        markCovered(marks, width, coveredBy(kernel, width, height, dx, dy), 1)
+      }
       if (++room === FIXED_FRAMES) {
         addInto(sum, this.#small)
         this.#small.fill(0)
@@ -105,7 +127,14 @@ export class Stacker {
       }
     }
     addInto(sum, this.#small)
-    const covered = coverageCounts(marks, width, height)
+    const covered = tiles
+      ? tileCoverage(tiles.field.mesh, kernel, (tile, mark) => {
+          for (const frame of frames) {
+            const { dx, dy } = tileShift(tiles.field, count, frame, tile, this.#shifts.dx[frame]!, this.#shifts.dy[frame]!)
+            mark(dx, dy)
+          }
+        })
+      : coverageCounts(marks, width, height)
     const samples = meanOf(sum, covered, scale, planes)
     fillUncovered(samples, covered, width, height, planes)
     return this.#aligned({ width, height, planes, samples, count: frames.length, restored: false })
@@ -127,13 +156,34 @@ export class Stacker {
     const sign = step > 0 ? 1 : -1
     const first = step > 0 ? this.#count : this.#count + step
     this.#small.fill(0)
-    for (let place = first; place < first + Math.abs(step); place++) {
+    if (this.#tiles) await this.#addTiles(this.#tiles, first, first + Math.abs(step), sign, signal)
+    else for (let place = first; place < first + Math.abs(step); place++) {
       const frame = this.#order[place]!
       const batch = await this.#frames.frame(frame, signal)
       addFrame(this.#adder, batch, 0, this.#shifts.dx[frame]!, this.#shifts.dy[frame]!, sign, this.#small)
     }
     addInto(this.#sum, this.#small)
     this.#count += step
+  }
+
+  /** Adds the tiles of places [from, to) of every tile's order, frame by frame. */
+  async #addTiles({ field, orders }: TileOrder, from: number, to: number, sign: 1 | -1, signal?: AbortSignal): Promise<void> {
+    const byFrame = new Map<number, number[]>()
+    orders.forEach((order, tile) => {
+      for (let place = from; place < to; place++) {
+        const list = byFrame.get(order[place]!)
+        if (list) list.push(tile)
+        else byFrame.set(order[place]!, [tile])
+      }
+    })
+    for (const [frame, list] of byFrame) {
+      signal?.throwIfAborted()
+      prepareForAdding(this.#adder, await this.#frames.frame(frame, signal), 0)
+      for (const tile of list) {
+        const { dx, dy } = tileShift(field, orders.length, frame, tile, this.#shifts.dx[frame]!, this.#shifts.dy[frame]!)
+        addTile(this.#adder, tile, dx, dy, sign, this.#small)
+      }
+    }
   }
 
   #nearest(wanted: number): { count: number, sum: Float64Array | null } {
@@ -161,8 +211,18 @@ export class Stacker {
   }
 
   /** How many of the best `count` frames cover each pixel; `every` second one from the first for a half. */
-  coverage(count: number, every: 1 | 2 = 1): Int32Array {
+  coverage(count: number, every: 1 | 2 = 1): Counts {
     const { width, height, kernel } = this.#ladder
+    const tiles = this.#tiles
+    if (tiles) {
+      return tileCoverage(tiles.field.mesh, kernel, (tile, mark) => {
+        for (let place = 0; place < count; place += every) {
+          const frame = tiles.orders[tile]![place]!
+          const { dx, dy } = tileShift(tiles.field, tiles.orders.length, frame, tile, this.#shifts.dx[frame]!, this.#shifts.dy[frame]!)
+          mark(dx, dy)
+        }
+      })
+    }
     const marks = coverageMarks(width, height)
     for (let place = 0; place < count; place += every) {
       const frame = this.#order[place]!

@@ -13,7 +13,7 @@ import { createScorer, emptyScore } from './scorer'
 import { findSignal } from './signal'
 import type { FrameScore, Survey, TargetForm } from './types'
 
-const CHOOSE = { score: { rankBy: 'peak' as const, blurPx: null }, register: { method: 'correlation' as const, windowPx: null, centre: null, referenceFraction: 0.05, refineRounds: 2, alignColours: false } }
+const CHOOSE = { score: { rankBy: 'peak' as const, blurPx: null }, register: { method: 'correlation' as const, windowPx: null, centre: null, referenceFraction: 0.05, refineRounds: 2, patches: 'never' as const, patchPlaces: null, alignColours: false } }
 
 /** Frames that tell the noise: each gives it from some ten thousand samples. */
 const NOISE_FRAMES = 16

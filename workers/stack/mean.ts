@@ -1,9 +1,12 @@
+/** Frames over each pixel; not whole where tiles share a pixel. */
+export type Counts = Int32Array | Float64Array
+
 /**
  * The mean of a fixed-point sum: sum / (scale × frames over the pixel), as float32.
  * Pixels that no frame covers repeat the nearest covered pixel of their row, then of their column, so that
  * edges neither glow nor go dark; `counts` says where that happened. With nothing covered the mean is 0.
  */
-export function meanOf(sum: Float64Array, counts: Int32Array, scale: number, planes: number, out = new Float32Array(sum.length)): Float32Array {
+export function meanOf(sum: Float64Array, counts: Counts, scale: number, planes: number, out = new Float32Array(sum.length)): Float32Array {
   const size = counts.length
   for (let plane = 0; plane < planes; plane++) {
     const base = plane * size
@@ -16,7 +19,7 @@ export function meanOf(sum: Float64Array, counts: Int32Array, scale: number, pla
 }
 
 /** Fills uncovered pixels in place; cheap when there are none. */
-export function fillUncovered(image: Float32Array, counts: Int32Array, width: number, height: number, planes: number): void {
+export function fillUncovered(image: Float32Array, counts: Counts, width: number, height: number, planes: number): void {
   if (!hasUncovered(counts)) return
   const size = width * height
   for (let plane = 0; plane < planes; plane++) {
@@ -26,12 +29,12 @@ export function fillUncovered(image: Float32Array, counts: Int32Array, width: nu
   }
 }
 
-function hasUncovered(counts: Int32Array): boolean {
+function hasUncovered(counts: Counts): boolean {
   for (let i = 0; i < counts.length; i++) if (counts[i]! <= 0) return true
   return false
 }
 
-function fillRow(image: Float32Array, counts: Int32Array, base: number, row: number, width: number): boolean {
+function fillRow(image: Float32Array, counts: Counts, base: number, row: number, width: number): boolean {
   const near = nearest(width, x => counts[row + x]! > 0)
   if (!near) return false
   for (let x = 0; x < width; x++) if (near[x] !== x) image[base + row + x] = image[base + row + near[x]!]!

@@ -19,7 +19,10 @@ export function registerClause({ register }: Recipe, chosen: Chosen): Piece[] {
     percent('register.referenceFraction', 'Reference fraction', register.referenceFraction),
     text(', '),
     choice('register.refineRounds', 'Refinement', register.refineRounds, roundLabels.map((label, value) => ({ value, label }))),
-    text(', and '),
+    text('; let parts of the field '),
+    choice('register.patches', 'Field patches', register.patches, [
+      { value: 'auto', label: 'follow their own air where it differs' }, { value: 'always', label: 'always follow their own air' }, { value: 'never', label: 'move as one' }]),
+    text(register.patchPlaces ? ` in ${register.patchPlaces.length} patches placed by hand, and ` : ', and '),
     choice('register.alignColours', 'Colours', register.alignColours, [
       { value: true, label: 'lay the colours on each other' }, { value: false, label: 'leave the colours as they are' }]),
     text('. '),
