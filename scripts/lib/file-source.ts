@@ -9,6 +9,16 @@ import type { ByteSource } from '../../workers/source/types'
 /** A file on disk; opened at the first read and closed by close(). */
 export function fileSource(file: string, name: string, size: number): ByteSource & { close(): Promise<void> } {
   let handle: Promise<FileHandle> | null = null
+  async function readAt(bytes: Uint8Array, from: number, offset: number) {
+    try {
+      handle ??= open(file, 'r')
+      return await (await handle).read(bytes, from, bytes.byteLength - from, offset)
+    }
+    catch (cause) {
+      handle = null
+      throw Object.assign(new CaptureError('unreadable', `${name} cannot be read. It may have been moved, changed or be on a card that was taken out, or you may not be allowed to read it. Put it back and start over.`), { cause })
+    }
+  }
   return {
     name,
     size,
@@ -16,10 +26,9 @@ export function fileSource(file: string, name: string, size: number): ByteSource
       signal?.throwIfAborted()
       checkRange(name, size, offset, length)
       const bytes = new Uint8Array(length)
-      handle ??= open(file, 'r')
       let done = 0
       while (done < length) {
-        const { bytesRead } = await (await handle).read(bytes, done, length - done, offset + done)
+        const { bytesRead } = await readAt(bytes, done, offset + done)
         if (bytesRead === 0) throw new CaptureError('unreadable', `${name} became shorter while it was read. Copy it again and start over.`)
         done += bytesRead
       }

@@ -144,7 +144,10 @@ function countFrames(name: string, size: number, header: SerHeader, notes: Captu
     return whole
   }
   const rest = body - declared * frameBytes
-  if (rest !== 0 && rest !== 8 * declared) {
+  if (rest > 0 && rest < Math.min(frameBytes, 8 * declared)) {
+    notes.push(trouble('times', `The file ends within the times of its frames: ${Math.floor(rest / 8).toLocaleString('en')} of ${declared.toLocaleString('en')} are there. All frames are whole; they are taken as evenly spaced.`))
+  }
+  else if (rest !== 0 && rest !== 8 * declared) {
     notes.push(trouble('frame-count', `The header declares ${declared.toLocaleString('en')} frames, but the size of the file does not agree: ${rest.toLocaleString('en')} bytes are left over, room for ${(whole - declared).toLocaleString('en')} more frames. The declared frames are used.`))
   }
   return declared

@@ -23,8 +23,10 @@ export function httpSource(url: string, name: string, size: number, fetcher: typ
     if (answer.status >= 500) throw new TypeError(`The archive answered ${answer.status}.`)
     if (answer.status === 404 || answer.status === 401 || answer.status === 403) throw new CaptureError('unreadable', `${name} is no longer available to you in the archive.`)
     const whole = answer.status === 200 && offset === 0 && length === size
-    const wanted = `bytes ${offset}-${offset + length - 1}/${size}`
-    if (!whole && (answer.status !== 206 || answer.headers.get('content-range') !== wanted)) {
+    // A server may leave the size open, "/*" (RFC 9110, section 14.4).
+    const range = `bytes ${offset}-${offset + length - 1}`
+    const given = answer.headers.get('content-range')
+    if (!whole && (answer.status !== 206 || (given !== `${range}/${size}` && given !== `${range}/*`))) {
       await answer.body?.cancel()
       throw new CaptureError('unreadable', `${name} cannot be read in parts from the archive (it answered ${answer.status}). Download it and open the file instead.`)
     }

@@ -1,12 +1,18 @@
 /** The first image of a FITS file: its shape, and what the keywords say. */
 import { mosaicPatterns, type CaptureFacts, type CaptureNote, type MosaicPattern } from '../../../shared/schemas/capture'
 import type { ByteSource } from '../../source/types'
-import { info } from '../facts'
+import { info, trouble } from '../facts'
 import { checkFrameSize } from '../limits'
 import { CaptureError } from '../types'
 import type { CardValue, FitsHeader } from './header'
 import { nextHeaderOffset, readHeader } from './header'
 import type { SampleFormat } from './samples'
+
+/** Images of a file: the first, and where the data of all those of the same shape begin. */
+export interface FitsImages extends FitsImage {
+  /** One for each image of the first one's shape and kind, in the order of the file; the first image included. */
+  parts: { dataOffset: number, startMs: number | null }[]
+}
 
 export interface FitsImage {
   width: number
@@ -21,24 +27,54 @@ export interface FitsImage {
   notes: CaptureNote[]
 }
 
-const MAX_UNITS = 1000
+const MAX_UNITS = 20_000
 
-/** Finds the first unit that holds an image of two axes or more. */
-export async function readFitsImage(source: ByteSource, signal?: AbortSignal): Promise<FitsImage> {
+/** Finds the units that hold an image of two axes or more: the first one, and those that are like it. */
+export async function readFitsImages(source: ByteSource, signal?: AbortSignal): Promise<FitsImages> {
   let offset = 0
+  let images: FitsImages | null = null
+  let others = 0
   const inherited = new Map<string, CardValue>()
   for (let unit = 0; unit < MAX_UNITS && offset < source.size; unit++) {
-    const header = await readHeader(source, offset, signal)
+    let header: FitsHeader
+    try {
+      header = await readHeader(source, offset, signal)
+    }
+    catch (error) {
+      // Bytes after the last unit (special records, or a cut) do not take away from the images before them.
+      if (images && error instanceof CaptureError) break
+      throw error
+    }
     const type = unit === 0 ? 'IMAGE' : header.cards.get('XTENSION')
     if (unit === 0 && header.cards.get('SIMPLE') === undefined) throw new CaptureError('damaged', `${source.name} does not begin as a FITS file must (SIMPLE). It is damaged or of another kind.`)
     if (type === 'BINTABLE' && header.cards.get('ZIMAGE') === true) {
-      throw new CaptureError('unsupported-compression', `${source.name} holds a tile-compressed FITS image (${String(header.cards.get('ZCMPTYPE') ?? 'unknown method')}). Unpack it with a general FITS tool (funpack) and open the unpacked file.`)
+      if (!images) throw new CaptureError('unsupported-compression', `${source.name} holds a tile-compressed FITS image (${String(header.cards.get('ZCMPTYPE') ?? 'unknown method')}). Unpack it with a general FITS tool (funpack) and open the unpacked file.`)
     }
-    if (type === 'IMAGE' && Number(header.cards.get('NAXIS')) >= 2 && header.dataBytes > 0) return shapeOf(source, header, inherited)
+    if (type === 'IMAGE' && Number(header.cards.get('NAXIS')) >= 2 && header.dataBytes > 0) {
+      if (!images) {
+        const image = shapeOf(source, header, inherited)
+        images = { ...image, parts: [{ dataOffset: image.dataOffset, startMs: startOfCards(image.cards) }] }
+      }
+      else if (sameShape(images.cards, header.cards)) images.parts.push({ dataOffset: header.dataOffset, startMs: startOfCards(header.cards) })
+      else others++
+    }
     if (unit === 0) for (const [key, value] of header.cards) inherited.set(key, value)
     offset = nextHeaderOffset(header)
   }
+  if (images) {
+    if (images.parts.length > 1) images.notes.push(info('extensions', `The file holds ${images.parts.length.toLocaleString('en')} images of one size in its extensions; each is taken as ${images.declared === 1 ? 'a frame' : `${images.declared.toLocaleString('en')} frames`}, in the order of the file.`))
+    if (others > 0) images.notes.push(trouble('extensions', `The file holds ${others === 1 ? 'another image' : `${others.toLocaleString('en')} other images`} of another size or kind of number, which ${others === 1 ? 'is' : 'are'} left out; the first image is used. Save the image you want as a file of its own if that is the wrong one.`))
+    return images
+  }
   throw new CaptureError('no-frames', `${source.name} is a FITS file without an image in it.`)
+}
+
+/** Whether an image has the axes and the numbers of another. */
+function sameShape(a: Map<string, CardValue>, b: Map<string, CardValue>): boolean {
+  const naxis = Number(a.get('NAXIS'))
+  if (Number(b.get('NAXIS')) !== naxis) return false
+  const keys = [...Array.from({ length: naxis }, (_, i) => `NAXIS${i + 1}`), 'BITPIX']
+  return keys.every(key => a.get(key) === b.get(key)) && (a.get('BZERO') ?? 0) === (b.get('BZERO') ?? 0) && (a.get('BSCALE') ?? 1) === (b.get('BSCALE') ?? 1) && (a.get('BLANK') ?? null) === (b.get('BLANK') ?? null)
 }
 
 function shapeOf(source: ByteSource, header: FitsHeader, inherited: Map<string, CardValue>): FitsImage {

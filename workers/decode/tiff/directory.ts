@@ -27,6 +27,8 @@ export interface TiffPage {
 
 const sizes: Record<number, number> = { 1: 1, 2: 1, 3: 2, 4: 4, 5: 8, 6: 1, 7: 1, 8: 2, 9: 4, 10: 8, 11: 4, 12: 8, 13: 4, 16: 8, 17: 8, 18: 8 }
 const wanted = new Set([256, 257, 258, 259, 262, 273, 277, 278, 279, 284, 317, 320, 322, 323, 324, 325, 339])
+/** One read of so many bytes takes in most directories whole. */
+const HEAD_BYTES = 512
 /** A page with more strips than this is damaged. */
 const MAX_VALUES = 4_000_000
 
@@ -56,15 +58,17 @@ export async function readPage(source: ByteSource, { littleEndian, big }: TiffLa
     const bytes = await source.read(at, length, signal)
     return new DataView(bytes.buffer, bytes.byteOffset, bytes.byteLength)
   }
-  const head = await viewOf(offset, countBytes)
+  const head = await viewOf(offset, Math.min(HEAD_BYTES, source.size - offset))
   const count = big ? Number(head.getBigUint64(0, littleEndian)) : head.getUint16(0, littleEndian)
   if (count === 0 || count > 4096) throw damaged('a page has no entries or far too many')
-  const view = await viewOf(offset + countBytes, count * entryBytes + (big ? 8 : 4))
+  const tableBytes = count * entryBytes + (big ? 8 : 4)
+  const view = countBytes + tableBytes <= head.byteLength ? new DataView(head.buffer, head.byteOffset + countBytes, tableBytes) : await viewOf(offset + countBytes, tableBytes)
   const tags = new Map<number, number[]>()
   for (let i = 0; i < count; i++) {
     const at = i * entryBytes
     const tag = view.getUint16(at, littleEndian)
-    if (!wanted.has(tag)) continue
+    // An entry that is there twice counts once, so that a page cannot ask for the same long list again and again.
+    if (!wanted.has(tag) || tags.has(tag)) continue
     const type = view.getUint16(at + 2, littleEndian)
     const n = big ? Number(view.getBigUint64(at + 4, littleEndian)) : view.getUint32(at + 4, littleEndian)
     const size = sizes[type]
@@ -104,7 +108,7 @@ export async function pageOffsets(source: ByteSource, layout: TiffLayout, signal
     if (offsets.length >= MAX_PAGES) throw new CaptureError('too-large', `${source.name} has more than ${MAX_PAGES.toLocaleString('en')} pages, more than Lull reads from one TIFF file. Save the recording as SER or FITS.`)
     const countBytes = big ? 8 : 2
     if (offset + countBytes > source.size) return { offsets, looped: false, cut: true }
-    const head = await source.read(offset, countBytes, signal)
+    const head = await source.read(offset, Math.min(HEAD_BYTES, source.size - offset), signal)
     const view = new DataView(head.buffer, head.byteOffset, head.byteLength)
     const count = big ? Number(view.getBigUint64(0, littleEndian)) : view.getUint16(0, littleEndian)
     const linkAt = offset + countBytes + count * (big ? 20 : 12)
@@ -112,7 +116,8 @@ export async function pageOffsets(source: ByteSource, layout: TiffLayout, signal
     if (count > 4096 || linkAt + linkBytes > source.size) return { offsets, looped: false, cut: true }
     seen.add(offset)
     offsets.push(offset)
-    const link = await source.read(linkAt, linkBytes, signal)
+    const inHead = linkAt - offset
+    const link = inHead + linkBytes <= head.byteLength ? head.subarray(inHead, inHead + linkBytes) : await source.read(linkAt, linkBytes, signal)
     const linkView = new DataView(link.buffer, link.byteOffset, link.byteLength)
     offset = big ? Number(linkView.getBigUint64(0, littleEndian)) : linkView.getUint32(0, littleEndian)
   }

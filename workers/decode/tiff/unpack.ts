@@ -93,8 +93,18 @@ export function unpackPackBits(bytes: Uint8Array, cap: number): Uint8Array<Array
   return out.subarray(0, size)
 }
 
+/**
+ * The most bytes that so many packed ones can give: Deflate makes at most 1032 of one (zlib's technical notes), a code of
+ * LZW at least 9 bits long at most a string of 3839 bytes, PackBits at most 128 of two.
+ */
+export function mostBytesOf(compression: number, packedBytes: number): number {
+  if (compression === 1) return packedBytes
+  return compression === 32773 ? 64 * packedBytes : compression === 5 ? 3839 * packedBytes : 1032 * packedBytes
+}
+
 /** The first `wanted` bytes of a strip or tile; null where the data do not give them. */
 export async function unpackBlock(compression: number, bytes: Uint8Array<ArrayBuffer>, wanted: number): Promise<Uint8Array<ArrayBuffer> | null> {
+  if (mostBytesOf(compression, bytes.byteLength) < wanted) return null
   const out = compression === 1 ? bytes : compression === 5 ? unpackLzw(bytes, wanted) : compression === 32773 ? unpackPackBits(bytes, wanted) : await inflateCapped(bytes, wanted)
   return out && out.byteLength >= wanted ? out : null
 }
