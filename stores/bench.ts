@@ -11,7 +11,7 @@ import type { MeasureRequest, MeasureResult, RunMeasure } from '~~/shared/schema
 import { readRecipe } from '~~/shared/recipe/migrate'
 import { withRecipeValue } from '~~/shared/recipe/sentences'
 import { defaultRecipe, restoringMethod, type Recipe } from '~~/shared/schemas/recipe'
-import { keepCount, type DisplayStretch, type LadderInfo, type Provenance, type StackFigures } from '~~/shared/schemas/run'
+import { keepCount, type DisplayStretch, type FieldFigures, type LadderInfo, type Provenance, type StackFigures } from '~~/shared/schemas/run'
 import { autoStretch } from '~/composables/useStretch'
 import { rememberBench, recallBench } from '~/composables/useBenchMemory'
 import { CoreStopped, useCore, type CoreHandle } from '~/composables/useCore'
@@ -53,6 +53,7 @@ export const useBenchStore = defineStore('bench', () => {
   const proofs = shallowRef<Proof[]>([])
   const average = shallowRef<{ image: StackImage, figures: StackFigures } | null>(null)
   const provenance = shallowRef<Provenance | null>(null)
+  const field = shallowRef<FieldFigures | null>(null)
   const evidence = shallowRef<Evidence | null>(null)
 
   const image = shallowRef<StackImage | null>(null)
@@ -189,12 +190,14 @@ export const useBenchStore = defineStore('bench', () => {
     switch (event.kind) {
       case 'progress': progress.value = event.progress; break
       case 'surveyed':
+        field.value = null
         kind.value = event.target; chosen.value = event.chosen; noSignal.value = event.noSignal
         if (!ladder.value) show(event.preview)
         break
       case 'frames': columns.value = event.columns; break
       case 'preview': if (!ladder.value) show(event.image); break
       case 'ranked': ranked.value = event.ranked; setAside.value = event.setAside as Record<string, number>; break
+      case 'field': field.value = event.figures; break
       case 'ladder': ladder.value = event.ladder; void follow(); break
       case 'proof':
         if (event.fraction === 'average') average.value = { image: event.image, figures: event.figures }
@@ -396,7 +399,7 @@ export const useBenchStore = defineStore('bench', () => {
   watch(showRestored, () => follow())
 
   return {
-    phase, input, facts, overrides, extra, problem, resumed, recipe, saved, past, future, progress, columns, kind, chosen, noSignal, ranked, setAside, ladder, proofs, average, provenance, evidence,
+    phase, input, facts, overrides, extra, problem, resumed, recipe, saved, past, future, progress, columns, kind, chosen, noSignal, ranked, setAside, ladder, proofs, average, provenance, evidence, field,
     measured, measuring, measureProblem, runMeasure, measureNow, setCalibration,
     image, figures, stretch, stretchIsAuto, showRestored, dragging, visible, count, optics, scale, restores, changed, busy,
     open, correct, run, change, edit, undo, redo, keep, endDrag, setStretch, applySaved, cancel, close, remember, exporter,
