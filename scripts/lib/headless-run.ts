@@ -70,7 +70,7 @@ async function results(engine: Engine, { recipe, measure }: HeadlessInput): Prom
  */
 async function measures(engine: Engine, fraction: number, wanted: HeadlessInput['measure']): Promise<object> {
   if (!wanted) return {}
-  const measure = await measurePair(engine.state!, { components: wanted.components, fraction })
+  const measure = await measurePair(engine.state!, { components: wanted.components, fraction, fringes: wanted.components === 2 }, undefined, engine.frames)
   if (measure.kind !== 'measured') return { measures: [], measure }
   const { calibration } = wanted
   return { measures: measure.values.map(value => (calibration ? { ...value, screenPaDeg: value.paDeg, ...onSky(value, calibration) } : value)), measure, ...(calibration ? { calibration } : {}) }

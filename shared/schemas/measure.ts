@@ -29,6 +29,18 @@ export const stabilityRowSchema = z.object({
 
 export const measureWarningSchema = z.object({ code: z.string(), text: z.string() })
 
+/** A pair measured by its fringes in the mean power spectrum of the frames: without any alignment. */
+export const fringeMeasureSchema = z.object({
+  frames: z.number().int().positive(), blocks: z.number().int().positive(),
+  /** Null where the spectrum shows no fringes that stand out. */
+  values: pairValuesSchema.extend({ quadrant: z.enum(quadrants) }).nullable(),
+  /** Contrast of the fringes, 2β/(1 + β²), and how many errors the triple correlation tells the sides apart by. */
+  visibility: z.number().min(0).max(1).nullable(), directionSigmas: z.number().nonnegative().nullable(),
+  /** Cycles per px beyond which signal drowns in noise, and the radial power over that at 0 for 0, 1/window … cycles per px. */
+  drownsAt: z.number().nonnegative(), windowPx: z.number().int().positive(), radialPower: z.array(z.number()),
+})
+export type FringeMeasure = z.infer<typeof fringeMeasureSchema>
+
 export const pairMeasureSchema = z.object({
   kind: z.literal('measured'),
   /** Frames in the stack, and the keep fraction asked for. */
@@ -45,6 +57,8 @@ export const pairMeasureSchema = z.object({
   /** Peak of the first component over the noise of the sky, from halves that were not aligned on each other's noise. */
   signalToNoise: z.number().nonnegative(),
   stability: z.array(stabilityRowSchema),
+  /** The same pair by its fringes, where that was asked for, and the largest difference of both over its error. */
+  fringes: fringeMeasureSchema.nullish(), fringesDiffer: z.number().nonnegative().nullish(),
   warnings: z.array(measureWarningSchema),
 })
 
@@ -55,6 +69,8 @@ export const noMeasureSchema = z.object({
   text: z.string(),
   fwhmPx: z.number().positive().nullable(),
   limits: z.array(z.object({ sepPx: z.number(), dMag: z.number() })),
+  /** A pair too close for the stack may still show in its fringes. */
+  fringes: fringeMeasureSchema.nullish(),
 })
 
 export const measureResultSchema = z.discriminatedUnion('kind', [pairMeasureSchema, noMeasureSchema])
@@ -71,6 +87,8 @@ export interface MeasureRequest {
   fraction: number
   /** Places to begin with, px on the stack; without them the stars are found blind. */
   hints?: { x: number, y: number }[]
+  /** Measures a pair by the fringes of its power spectrum as well; takes a transform or two of every frame. */
+  fringes?: boolean
 }
 
 /** A measure as it is filed with a run: the values, what they were turned into arcseconds with, and when. */

@@ -10,6 +10,8 @@ import type { MeasureRequest, MeasureResult, NoMeasure, PairMeasure, PairValues,
 import { keepCount } from '../../shared/schemas/run'
 import { stackLuminance } from '../score/figures'
 import type { RunState } from './engine'
+import type { FrameStore } from './frames'
+import { fringesOf, spectraOf } from './fringes'
 
 /** Blocks of time: enough to tell an error, long enough that they do not share their air. */
 const BLOCKS = 32
@@ -19,7 +21,28 @@ const MOST_FRAMES = 20_000
 /** Brightness of two stars must differ by so many errors for the quadrant to be determined. */
 const QUADRANT_SIGMAS = 3
 
-export async function measurePair(state: RunState, { components: wanted, fraction, hints }: MeasureRequest, signal?: AbortSignal): Promise<MeasureResult> {
+/** @param frameStore the run's frames; needed where fringes are asked for */
+export async function measurePair(state: RunState, request: MeasureRequest, signal?: AbortSignal, frameStore?: FrameStore): Promise<MeasureResult> {
+  const result = await measureStack(state, request, signal)
+  if (!request.fringes || !frameStore || request.components !== 2 || result.kind === 'no-signal' || state.surveyed.survey.kind !== 'star') return result
+  await breathe()
+  const fringes = fringesOf(await spectraOf(state, frameStore, signal))
+  if (result.kind !== 'measured') return { ...result, fringes }
+  if (!fringes.values) return { ...result, fringes }
+  const own = fringes.values.quadrant === 'determined' ? fringes.values : towards(fringes.values, result.values[0]!)
+  // The stack and the spectrum see the same frames: their errors are not independent, and the larger one is taken.
+  const fringesDiffer = disagreement(result.values, [own])
+  const warnings = [...result.warnings]
+  if (fringesDiffer > 3.5) warnings.push({ code: 'fringes', text: `The fringes of the power spectrum give another result, by ${fringesDiffer.toFixed(1)} times its error.` })
+  return { ...result, fringes: { ...fringes, values: { ...own, quadrant: fringes.values.quadrant } }, fringesDiffer, warnings }
+}
+
+/** Fringes whose side is not settled, turned to the side that the stack shows. */
+function towards(values: PairValues, stack: PairValues): PairValues {
+  return Math.abs(angleDifference(values.paDeg, stack.paDeg)) > 90 ? { ...values, paDeg: (values.paDeg + 180) % 360 } : values
+}
+
+async function measureStack(state: RunState, { components: wanted, fraction, hints }: MeasureRequest, signal?: AbortSignal): Promise<MeasureResult> {
   const { surveyed: { survey }, stacker } = state
   const frames = keepCount(fraction, stacker.ranked)
   const none = (kind: NoMeasure['kind'], text: string, more: Partial<NoMeasure> = {}): NoMeasure => ({ kind, frames, fraction, text, fwhmPx: null, limits: [], ...more })

@@ -89,9 +89,9 @@ export class Session implements CoreApi {
   async measure(request: MeasureRequest): Promise<MeasureResult> {
     this.#measuring?.abort()
     const controller = this.#measuring = new AbortController()
-    const { state } = this.#need()
+    const { state, frames } = this.#need()
     if (!state) throw new Error('Nothing is stacked yet: run the recipe first.')
-    return await measurePair(state, request, controller.signal)
+    return await measurePair(state, request, controller.signal, frames)
   }
 
   async drift(declinationDeg: number, onProgress: (done: number, total: number) => void): Promise<DriftAnswer> {
