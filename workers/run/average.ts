@@ -77,7 +77,10 @@ export const averageScale = (facts: CaptureFacts, stackScale: number): number =>
 
 /** The mean of `count` frames from a sum of AverageSum. */
 export function averageOf(sum: Float64Array, count: number, scale: number): Float32Array {
-  return Float32Array.from(sum, value => value / (count * scale))
+  const mean = new Float32Array(sum.length)
+  const by = count * scale
+  for (let i = 0; i < mean.length; i++) mean[i] = sum[i]! / by
+  return mean
 }
 
 /** The plain unregistered mean of all readable frames as stored; a mosaic stays a mosaic (one plane). */

@@ -198,16 +198,21 @@ const TILE = 4
 
 /** Standard error of halvesNoise: the scatter between eight interleaved sets of small squares, each with its own noise, over the root of eight. */
 export function noiseError(a: Float32Array, b: Float32Array, width: number, height: number): number | null {
-  const sets: [number[], number[]][] = Array.from({ length: SETS }, () => [[], []])
+  // Tiles of one set in a row of tiles are the same for four rows; no set gets more than its share and the edge's.
+  const most = Math.ceil(width / TILE + SETS) * Math.ceil(height / TILE + SETS) * TILE * TILE / SETS + TILE * TILE * Math.ceil(height / TILE)
+  const sets = Array.from({ length: SETS }, () => [new Float32Array(most), new Float32Array(most)] as const)
+  const filled = new Int32Array(SETS)
   for (let y = 0; y < height; y++) {
+    const down = 3 * Math.floor(y / TILE)
     for (let x = 0; x < width; x++) {
-      const [one, other] = sets[(Math.floor(x / TILE) + 3 * Math.floor(y / TILE)) % SETS]!
-      one.push(a[y * width + x]!)
-      other.push(b[y * width + x]!)
+      const set = (Math.floor(x / TILE) + down) % SETS
+      const at = filled[set]!++
+      sets[set]![0][at] = a[y * width + x]!
+      sets[set]![1][at] = b[y * width + x]!
     }
   }
   if (width * height < SETS * 64) return null
-  const found = sets.map(([one, other]) => halvesNoise(Float32Array.from(one), Float32Array.from(other)))
+  const found = sets.map(([one, other], set) => halvesNoise(one.subarray(0, filled[set]), other.subarray(0, filled[set])))
   const mean = found.reduce((sum, v) => sum + v, 0) / SETS
   return Math.sqrt(found.reduce((sum, v) => sum + (v - mean) ** 2, 0) / (SETS - 1) / SETS)
 }

@@ -106,7 +106,7 @@ async function cumulate({ pool, signal }: PassContext, ladder: Ladder, owner: nu
     }
     if (odd!.length > 0) addInto(whole, odd!)
     ladder.sums.push(whole.slice())
-    ladder.halves.push(Float32Array.from(half))
+    ladder.halves.push(new Float32Array(half))
   }
 }
 

@@ -31,7 +31,7 @@ export async function growingPreview({ frames, signal }: PassContext, surveyed: 
     markCovered(marks, width, coveredBy('nearest', width, height, dx, dy), 1)
   }
   const counts = coverageCounts(marks, width, height)
-  const samples = meanOf(Float64Array.from(small), counts, scale, planes)
+  const samples = meanOf(new Float64Array(small), counts, scale, planes)
   fillUncovered(samples, counts, width, height, planes)
   return { width, height, planes, samples, count: best.length, restored: false }
 }
@@ -54,7 +54,7 @@ function bestFrames(score: Float64Array, setAside: Uint8Array, frames: FrameStor
 export async function singleFrame(frames: FrameStore, index: number, plan: PreparePlan | null): Promise<StackImage> {
   const { width, height, planes } = frames.reader.facts
   const { samples, offset } = await frames.frame(index)
-  if (!plan) return { width, height, planes, samples: Float32Array.from(samples.subarray(offset, offset + frames.frameSamples)), count: 1, restored: false }
+  if (!plan) return { width, height, planes, samples: new Float32Array(samples.subarray(offset, offset + frames.frameSamples)), count: 1, restored: false }
   const shown = outPlanes(plan)
   const out = new Float32Array(width * height * shown)
   if (shown === 3) prepareColour(samples, offset, plan, out)

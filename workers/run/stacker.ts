@@ -237,9 +237,12 @@ export class Stacker {
     if (counts[rung]! < 2) return null
     const all = this.coverage(counts[rung]!)
     const first = this.coverage(counts[rung]!, 2)
-    const one = meanOf(Float64Array.from(halves[rung]!), first, scale, planes)
-    const second = all.map((n, i) => n - first[i]!)
-    const rest = Float64Array.from(sums[rung]!, (value, i) => value - halves[rung]![i]!)
+    const one = meanOf(new Float64Array(halves[rung]!), first, scale, planes)
+    const second = all
+    for (let i = 0; i < second.length; i++) second[i]! -= first[i]!
+    const rest = sums[rung]!.slice()
+    const half = halves[rung]!
+    for (let i = 0; i < rest.length; i++) rest[i]! -= half[i]!
     const other = meanOf(rest, second, scale, planes)
     const { width, height } = this.#ladder
     fillUncovered(one, first, width, height, planes)
