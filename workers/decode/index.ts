@@ -13,7 +13,7 @@ import { openSequence } from './sequence'
 import { CaptureError, type FrameReader } from './types'
 
 const HEAD_BYTES = 512
-const known = 'SER, FITS, TIFF and PNG'
+const known = 'SER, FITS, TIFF, PNG, JPEG and AVI without compression'
 
 /** Files beside a recording that are no frames: system files, notes, settings. */
 function foreign(path: string): boolean {

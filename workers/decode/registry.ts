@@ -1,6 +1,8 @@
 /** Every decoder, in the order in which a file is offered to them. */
 import type { CaptureFormat } from '../../shared/schemas/capture'
+import { openAvi } from './avi/reader'
 import { openFits } from './fits/reader'
+import { openJpeg } from './jpeg/reader'
 import { openPng } from './png/reader'
 import type { OpenOne } from './sequence'
 import { openSer, readSerHeader, serAgrees } from './ser'
@@ -37,6 +39,17 @@ export const decoders: Decoder[] = [
     format: 'png', label: 'a PNG file', extensions: ['png'],
     recognise: head => startsWith(head, 0x89, 0x50, 0x4e, 0x47, 0x0d, 0x0a, 0x1a, 0x0a),
     open: openPng,
+  },
+  {
+    format: 'jpeg', label: 'a JPEG file', extensions: ['jpg', 'jpeg'],
+    recognise: head => startsWith(head, 0xff, 0xd8, 0xff),
+    open: openJpeg,
+  },
+  {
+    format: 'avi', label: 'an AVI file', extensions: ['avi'],
+    // "RIFF", a size, "AVI "
+    recognise: head => startsWith(head, 0x52, 0x49, 0x46, 0x46) && startsWith(head.subarray(8), 0x41, 0x56, 0x49, 0x20),
+    open: openAvi,
   },
   {
     format: 'ser', label: 'a SER file', extensions: ['ser'],

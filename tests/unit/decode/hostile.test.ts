@@ -1,11 +1,13 @@
 /** Files that are damaged or made to harm: a typed error or frames of the declared size, and never a hang. */
 import { deflateSync } from 'node:zlib'
+import { encode as encodeJpeg } from 'jpeg-js'
 import { describe, expect, it } from 'vitest'
 import { openCapture } from '../../../workers/decode/index'
 import { CaptureError } from '../../../workers/decode/types'
 import { unpackLzw, unpackPackBits } from '../../../workers/decode/tiff/unpack'
 import { memorySource } from '../../../workers/source/memory'
 import { serHeader } from '../../../workers/rehearse/index'
+import { aviFile } from '../../fixtures/avi'
 import { fitsCube, pngFrame, tiffPages, type Frames } from '../../fixtures/captures'
 import { uniformFrom } from '../support/moving-double'
 
@@ -54,6 +56,8 @@ const raw = new Uint8Array(frames.samples.slice(0, 48).buffer)
 const files: Record<string, Uint8Array> = {
   'a.ser': ser(), 'a.fits': fitsCube(frames), 'a.tif': tiffPages(frames), 'a.png': pngFrame(frames, 0),
   'lzw.tif': packedTiff({ compression: 5, data: lzwOf(raw) }), 'deflate.tif': packedTiff({ compression: 8, data: deflateSync(raw) }),
+  'a.avi': aviFile({ width: 8, height: 6, bits: 8, frames: [0, 1, 2].map(i => new Uint8Array(raw.subarray(i, i + 48))), index: 'opendml' }),
+  'a.jpg': new Uint8Array(encodeJpeg({ width: 8, height: 6, data: new Uint8Array(8 * 6 * 4).map((_, i) => (i * 7) & 255) }, 90).data),
 }
 
 /** Opens and reads everything; the error's code, or the number of frames. Anything but a CaptureError is thrown on. */
