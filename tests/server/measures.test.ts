@@ -54,6 +54,20 @@ describe('the table of measures', () => {
     expect(mean!.scatter.sep).toBeCloseTo(2, 6)
     expect(mean!.sepErr).toBeCloseTo(0.01 * 0.253977, 7)
   })
+  it('adds the error of a calibration once, however many nights used it, and folds angles of equal stars', async () => {
+    const shared = { ...calibration, name: 'Shared drift', scaleErr: 0.253977 * 0.005, angleErr: 0.3 }
+    for (const [night, turned] of [['2031-04-01', 0], ['2031-04-02', 180], ['2031-04-03', 0]] as const) {
+      const own = measureOf(11.18034, true)
+      own.measure.values[0] = { ...own.measure.values[0]!, paDeg: (63.43495 + turned) % 360, dMag: 0.01, quadrant: 'undetermined' }
+      await file('Cedar pair', night, { ...own, calibration: shared })
+    }
+    const mean = (await table()).means.find(({ target }) => target.name === 'Cedar pair')!
+    expect(mean.nights).toBe(3)
+    expect(mean.angle).toBeCloseTo(60.0816, 3)
+    // 0.1°/√3 of the fits and 0.3° of the calibration; 0.5 % of 2.83955″ and 0.01 px/√3.
+    expect(mean.angleErr).toBeCloseTo(Math.hypot(0.1 / Math.sqrt(3), 0.3), 6)
+    expect(mean.sepErr).toBeCloseTo(Math.hypot(0.01 * 0.253977 / Math.sqrt(3), 0.005 * 11.18034 * 0.253977), 6)
+  })
   it('is that of one pair where asked, and of the own club', async () => {
     const { targets } = await table()
     expect((await table(`?target=${targets.find(({ name }) => name === 'Alder pair')!.id}`)).lines).toHaveLength(2)

@@ -15,6 +15,9 @@ const MAX_LINES = 5000
 
 interface Row { id: string, night: Date | string, measure: string, start: string | null, end: string | null, aperture: number | null, owner: string, target_id: string, target: string, review_state: ReviewState }
 
+/** A line with its errors apart: those of the fit are its own, those of the calibration it shares with all that used it. */
+interface FullLine { line: MeasureLine, fit: { sep: number, angle: number }, shared: { key: string, sep: number, angle: number } }
+
 export async function measureTable(actor: Actor, query: z.output<typeof measureQuery>): Promise<MeasureTable> {
   const db = useDb()
   const found = db('runs as r').join('users as u', 'u.id', 'r.owner_id').join('targets as t', 't.id', 'r.target_id')
@@ -29,11 +32,11 @@ export async function measureTable(actor: Actor, query: z.output<typeof measureQ
     'r.id', 'r.night', 'r.measure', 'r.review_state', 'u.name as owner', 't.id as target_id', 't.name as target',
     db.raw('json_unquote(json_extract(r.result, \'$.facts.times.start\')) as start'), db.raw('json_unquote(json_extract(r.result, \'$.facts.times.end\')) as end'),
     db.raw('json_extract(r.result, \'$.facts.apertureMm\') as aperture')) as Row[]
-  const lines = rows.flatMap(linesOf)
-  return { lines, means: meansOf(lines), targets }
+  const full = rows.flatMap(linesOf)
+  return { lines: full.map(({ line }) => line), means: meansOf(full), targets }
 }
 
-function linesOf(row: Row): MeasureLine[] {
+function linesOf(row: Row): FullLine[] {
   const { measure, calibration } = JSON.parse(row.measure) as RunMeasure
   const night = typeof row.night === 'string' ? row.night.slice(0, 10) : row.night.toISOString().slice(0, 10)
   const [start, end] = [Date.parse(row.start ?? ''), Date.parse(row.end ?? '')]
@@ -41,36 +44,66 @@ function linesOf(row: Row): MeasureLine[] {
   const aperture = Number(row.aperture)
   return measure.values.map((values, j) => {
     const told = toldValues(values, calibration)
-    return {
+    const exact = toldValues(values, calibration && { ...calibration, scaleErr: 0, angleErr: 0 })
+    const line: MeasureLine = {
       run: { id: row.id, night, owner: row.owner, review: row.review_state }, target: { id: row.target_id, name: row.target }, components: `A${'BCD'[j]}`, epoch: julianYear(julianDate(middle)),
       ...told, quadrant: values.quadrant, frames: measure.frames, apertureMm: Number.isFinite(aperture) && aperture > 0 ? aperture : null,
       calibration: calibration?.name ?? null, equinox: told.positionAngle ? calibration?.equinox ?? null : null,
     }
+    return {
+      line, fit: { sep: exact.sepErr, angle: exact.angleErr },
+      shared: calibration
+        ? { key: calibration.id ?? calibration.name, sep: values.sepPx * calibration.scaleErr, angle: calibration.angleErr ?? 0 }
+        : { key: '', sep: 0, angle: 0 },
+    }
   })
 }
 
-/** Means of what was measured on the sky in several nights, one vote a night. */
-function meansOf(lines: MeasureLine[]): MeasureMean[] {
-  const groups = new Map<string, MeasureLine[]>()
-  for (const line of lines) {
+/** Nothing is known better than this; an error of 0 would outweigh everything. */
+const LEAST = 1e-9
+
+/**
+ * Means of what was measured on the sky in several nights. Weighted by the errors of the fits, which are each run's own; the
+ * error of a calibration is the same in all runs that used it, and is added once, with their share of the weight.
+ */
+function meansOf(lines: FullLine[]): MeasureMean[] {
+  const groups = new Map<string, FullLine[]>()
+  for (const full of lines) {
+    const { line } = full
     if (line.sepUnit !== '″' || !line.positionAngle) continue
-    const key = `${line.target.id} ${line.components}`
-    groups.set(key, [...groups.get(key) ?? [], line])
+    // Angles for different equators are not averaged.
+    const key = `${line.target.id} ${line.components} ${line.equinox}`
+    groups.set(key, [...groups.get(key) ?? [], full])
   }
   return [...groups.values()].flatMap((group) => {
-    const nights = new Set(group.map(line => line.run.night)).size
+    const first = group[0]!.line
+    const nights = new Set(group.map(({ line }) => line.run.night)).size
     if (nights < 2) return []
-    const first = group[0]!
-    const sep = weightedMean(group.map(line => ({ value: line.sep, err: line.sepErr })))
-    const angle = weightedMean(group.map(line => ({ value: angleDifference(line.angle, first.angle), err: line.angleErr })))
-    const dMag = weightedMean(group.map(line => ({ value: line.dMag, err: line.dMagErr })))
+    // Where it is not known which star is the brighter, an angle stands for its opposite as well.
+    const folded = group.some(({ line }) => line.quadrant === 'undetermined')
+    const away = (angle: number) => {
+      const difference = angleDifference(angle, first.angle)
+      return folded && Math.abs(difference) > 90 ? difference - 180 * Math.sign(difference) : difference
+    }
+    const sep = meanWith(group, 'sep', ({ line }) => line.sep)
+    const angle = meanWith(group, 'angle', ({ line }) => away(line.angle))
+    const dMag = weightedMean(group.map(({ line }) => ({ value: line.dMag, err: Math.max(LEAST, line.dMagErr) })))
     const freedom = group.length - 1
     return [{
-      target: first.target, components: first.components, nights, epoch: group.reduce((sum, line) => sum + line.epoch, 0) / group.length,
+      target: first.target, components: first.components, nights, epoch: group.reduce((sum, { line }) => sum + line.epoch, 0) / group.length,
       sep: sep.value, sepErr: sep.err, angle: reduce360(first.angle + angle.value), angleErr: angle.err, dMag: dMag.value, dMagErr: dMag.err,
       scatter: { sep: sep.chiSquared / freedom, angle: angle.chiSquared / freedom },
     }]
   })
+}
+
+function meanWith(group: readonly FullLine[], what: 'sep' | 'angle', value: (full: FullLine) => number) {
+  const mean = weightedMean(group.map(full => ({ value: value(full), err: Math.max(LEAST, full.fit[what]) })))
+  const weights = group.map(full => Math.max(LEAST, full.fit[what]) ** -2)
+  const total = weights.reduce((sum, weight) => sum + weight, 0)
+  const byCalibration = new Map<string, number>()
+  group.forEach((full, i) => byCalibration.set(full.shared.key, (byCalibration.get(full.shared.key) ?? 0) + weights[i]! / total * full.shared[what]))
+  return { ...mean, err: Math.hypot(mean.err, ...byCalibration.values()) }
 }
 
 /** Method code of selected short exposures with an electronic detector in the catalogues of double stars. */
